@@ -1,0 +1,159 @@
+"""Voltage, current, power, charge and energy, from alternating conversions, without loss of resolution.
+
+A pair is a current conversion between two voltage conversions: power is that current times the mean of the two
+voltages, which cancels the time between them to first order. Charge and energy are kept in microampere-steps
+and microwatt-steps as two limbs, so that a week at the smallest current loses nothing. Windows gather means and
+extremes for whoever reads them. Everything called within the control step allocates nothing and stays below 2**30.
+"""
+
+from micropython import const
+
+_LIMB_BITS = const(26)
+_LIMB_MASK = const((1 << 26) - 1)
+_SUM_BITS = const(12)
+_SUM_MASK = const((1 << 12) - 1)
+_FAR = const(0x3FFFFFFF)
+#: Readings are held within these, so that a product of the two stays a small integer.
+_LARGEST_VOLTAGE_mV = const(80_000)
+_LARGEST_CURRENT_mA = const(12_000)
+
+
+class Limbs:
+    """A sum that never overflows: `high * 2**26 + low`; an amount may reach 2**30 - 2**26."""
+
+    def __init__(self):
+        self.clear()
+
+    def clear(self):
+        self.high = 0
+        self.low = 0
+
+    def add(self, amount):
+        low = self.low + amount
+        self.high += low >> _LIMB_BITS
+        self.low = low & _LIMB_MASK
+
+    def total(self):
+        return (self.high << _LIMB_BITS) + self.low
+
+
+class Window:
+    """Means and extremes of the pairs since `restart`."""
+
+    def __init__(self):
+        self.restart()
+
+    def restart(self):
+        self.pairs = 0
+        self._voltage_high = 0
+        self._voltage_low = 0
+        self._current_high = 0
+        self._current_low = 0
+        self.voltage_min_uV = _FAR
+        self.voltage_max_uV = -_FAR
+        self.current_min_uA = _FAR
+        self.current_max_uA = -_FAR
+
+    def see_voltage(self, voltage_uV):
+        if voltage_uV < self.voltage_min_uV:
+            self.voltage_min_uV = voltage_uV
+        if voltage_uV > self.voltage_max_uV:
+            self.voltage_max_uV = voltage_uV
+
+    def add(self, voltage_uV, current_uA):
+        self.pairs += 1
+        self._voltage_high += voltage_uV >> _SUM_BITS
+        self._voltage_low += voltage_uV & _SUM_MASK
+        self._current_high += current_uA >> _SUM_BITS
+        self._current_low += current_uA & _SUM_MASK
+        if current_uA < self.current_min_uA:
+            self.current_min_uA = current_uA
+        if current_uA > self.current_max_uA:
+            self.current_max_uA = current_uA
+
+    def voltage_uV(self):
+        return ((self._voltage_high << _SUM_BITS) + self._voltage_low) // self.pairs
+
+    def current_uA(self):
+        return ((self._current_high << _SUM_BITS) + self._current_low) // self.pairs
+
+
+def power_uW(voltage_uV, current_uA):
+    """Product to within 2 uW, every intermediate below 2**30 for readings within the meter's bounds."""
+    voltage_mV = voltage_uV // 1000
+    current_mA = current_uA // 1000
+    small = voltage_mV * (current_uA - current_mA * 1000) + (voltage_uV - voltage_mV * 1000) * current_mA
+    return voltage_mV * current_mA + small // 1000
+
+
+def _held(value, largest):
+    return min(max(value, -largest), largest)
+
+
+class Meter:
+    def __init__(self, period_us):
+        self._period_us = period_us
+        self._current_is_fresh = False
+        self._steps = 0
+        self.counting = False
+        self.voltage_uV = 0
+        self.current_uA = 0
+        self.power_uW = 0
+        self.force_uV = 0
+        self.heatsink_mC = 0
+        self.charge = Limbs()
+        self.energy = Limbs()
+        self.telemetry = Window()
+        self.log = Window()
+
+    def step(self):
+        self._steps += 1
+
+    def take_current(self, current_uA):
+        self.current_uA = _held(current_uA, _LARGEST_CURRENT_mA * 1000)
+        self._current_is_fresh = True
+
+    def take_voltage(self, voltage_uV):
+        """Return whether this voltage completed a pair."""
+        voltage_uV = _held(voltage_uV, _LARGEST_VOLTAGE_mV * 1000)
+        before = self.voltage_uV
+        self.voltage_uV = voltage_uV
+        self.telemetry.see_voltage(voltage_uV)
+        self.log.see_voltage(voltage_uV)
+        if not self._current_is_fresh:
+            return False
+        self._current_is_fresh = False
+        self._pair((before + voltage_uV) >> 1)
+        return True
+
+    def _pair(self, voltage_uV):
+        current_uA = self.current_uA
+        power = power_uW(voltage_uV, current_uA)
+        self.power_uW = power
+        self.telemetry.add(voltage_uV, current_uA)
+        self.log.add(voltage_uV, current_uA)
+        if self.counting:
+            self._count(current_uA, power)
+        self._steps = 0
+
+    def _count(self, current_uA, power):
+        # A pair stands for the two or three steps since the one before, and for no more than eight after a stall.
+        # Power times steps could pass 2**30, so it is added step by step.
+        for _ in range(min(self._steps, 8)):
+            self.charge.add(current_uA)
+            self.energy.add(power)
+
+    def restart(self):
+        """A run begins: charge and energy count from nothing."""
+        self.charge.clear()
+        self.energy.clear()
+        self.counting = True
+
+    def stop(self):
+        self.counting = False
+
+    def charge_uC(self):
+        return self.charge.total() * self._period_us // 1_000_000
+
+    def energy_uJ(self):
+        return self.energy.total() * self._period_us // 1_000_000

@@ -1,0 +1,112 @@
+"""The run log: the whole of a run in a fixed amount of memory, for a host that comes back later.
+
+An entry every `spacing_ms`; when the log is full, neighbours are merged and the spacing doubles, so that a
+run of any length is covered from its beginning. Everything is preallocated. Merging goes on in bounded slices
+between control steps, while the meter's own window keeps gathering.
+"""
+
+from array import array
+
+from micropython import const
+
+_FIRST_SPACING_ms = const(1_000)
+_MERGES_PER_SLICE = const(16)
+_LOWEST_cC = const(-32768)
+_HIGHEST_cC = const(32767)
+
+
+class RunLog:
+    def __init__(self, meter, timekeeper, capacity):
+        self._meter = meter
+        self._time = timekeeper
+        self.capacity = capacity
+        self.time_ms = array("I", [0] * capacity)
+        self.voltage_uV = array("i", [0] * capacity)
+        self.voltage_min_uV = array("i", [0] * capacity)
+        self.voltage_max_uV = array("i", [0] * capacity)
+        self.current_uA = array("i", [0] * capacity)
+        self.heatsink_cC = array("h", [0] * capacity)
+        self.charge_mC = array("I", [0] * capacity)
+        self.running = False
+        self._reset()
+
+    def _reset(self):
+        self.entries = 0
+        self.spacing_ms = _FIRST_SPACING_ms
+        self._merged = 0
+        self._merging = False
+
+    def begin(self):
+        """A run begins: the log of the one before is given up."""
+        self._reset()
+        self._started_s = self._time.seconds
+        self._started_ms = self._time.micros // 1000
+        self._due_ms = self.spacing_ms
+        self._meter.log.restart()
+        self.running = True
+
+    def end(self):
+        """The run is over: what was gathered since the last entry becomes one more."""
+        if not self.running:
+            return
+        self.running = False
+        while self._merging:
+            self._merge_slice()
+        if self._meter.log.pairs:
+            self._append(self.elapsed_ms())
+
+    def elapsed_ms(self):
+        return (self._time.seconds - self._started_s) * 1000 + self._time.micros // 1000 - self._started_ms
+
+    def service(self):
+        """Between control steps: append when due, merge a slice when full."""
+        if self._merging:
+            self._merge_slice()
+            return
+        if not self.running or self.elapsed_ms() < self._due_ms or not self._meter.log.pairs:
+            return
+        self._append(self.elapsed_ms())
+        self._due_ms += self.spacing_ms
+        if self.entries == self.capacity:
+            self._merging = True
+            self._merged = 0
+
+    def _append(self, time_ms):
+        if self.entries == self.capacity:
+            return
+        window = self._meter.log
+        at = self.entries
+        self.time_ms[at] = time_ms
+        self.voltage_uV[at] = window.voltage_uV()
+        self.voltage_min_uV[at] = window.voltage_min_uV
+        self.voltage_max_uV[at] = window.voltage_max_uV
+        self.current_uA[at] = window.current_uA()
+        self.heatsink_cC[at] = min(max(self._meter.heatsink_mC // 10, _LOWEST_cC), _HIGHEST_cC)
+        self.charge_mC[at] = max(self._meter.charge_uC() // 1000, 0)
+        self.entries = at + 1
+        window.restart()
+
+    def _merge_slice(self):
+        for _ in range(_MERGES_PER_SLICE):
+            if 2 * self._merged + 1 >= self.entries:
+                self._finish_merging()
+                return
+            self._merge(self._merged)
+            self._merged += 1
+
+    def _merge(self, at):
+        first = 2 * at
+        second = first + 1
+        self.time_ms[at] = self.time_ms[second]
+        self.voltage_uV[at] = (self.voltage_uV[first] + self.voltage_uV[second]) >> 1
+        self.voltage_min_uV[at] = min(self.voltage_min_uV[first], self.voltage_min_uV[second])
+        self.voltage_max_uV[at] = max(self.voltage_max_uV[first], self.voltage_max_uV[second])
+        self.current_uA[at] = (self.current_uA[first] + self.current_uA[second]) >> 1
+        self.heatsink_cC[at] = max(self.heatsink_cC[first], self.heatsink_cC[second])
+        self.charge_mC[at] = self.charge_mC[second]
+
+    def _finish_merging(self):
+        self.entries = self._merged
+        self.spacing_ms *= 2
+        self._due_ms = self.time_ms[self.entries - 1] + self.spacing_ms
+        self._merging = False

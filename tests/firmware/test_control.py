@@ -1,0 +1,165 @@
+"""The control step: what it measures, where it drives, and that it never touches the heap."""
+
+from __future__ import annotations
+
+import pytest
+
+from tests.firmware.running import on_board
+
+
+def test_enabling_ramps_to_the_set_point_at_the_slew_limit() -> None:
+    found = on_board("""
+        session = Session()
+        session.take_control()
+        session.ask(wire.SET_LIMITS, struct.pack(wire.SET_LIMITS_FORMAT, 4_000_000, 30_000_000, 40_000_000,
+                                                 85_000, 125_000, 10_000, 3_000))
+        session.ask(wire.SET_POINT, struct.pack(wire.SET_POINT_FORMAT, wire.MODE_CURRENT, 1_000_000))
+        session.board.show(0, 12_000_000)
+        session.ask(wire.ENABLE, bytes([wire.SILENCE_STOP]))
+        found = []
+        for _ in range(60):
+            session.turns(1)
+            session.board.show(session.firmware.control.demand_uA, 12_000_000)
+            found.append(session.firmware.control.demand_uA)
+    """)
+    steps = [after - before for before, after in zip(found, found[1:], strict=False)]
+    assert max(steps) == 23_500  # 10 A/s for 2.35 ms
+    assert min(steps) >= 0
+    assert found[-1] == 1_000_000
+
+
+def test_a_current_below_the_demand_is_a_state_and_not_a_fault() -> None:
+    found = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        session.board.show(700_000, 1_000_000)
+        session.turns(12)
+        limited = [session.firmware.control.limiting, session.firmware.guard.fault, session.board.gate.released]
+        session.board.show(2_000_000, 12_000_000)
+        session.turns(12)
+        found = [limited, session.firmware.control.limiting]
+    """)
+    assert found == [[1, 0, True], 0]
+
+
+def test_no_current_and_no_voltage_is_told_as_no_source() -> None:
+    limiting = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        session.board.show(0, 0)
+        session.turns(12)
+        found = session.firmware.control.limiting
+    """)
+    assert limiting == 4
+
+
+def test_the_zero_is_measured_while_clamped_and_taken_from_every_reading() -> None:
+    found = on_board("""
+        session = Session()
+        session.board.show(12_000, 12_000_000)
+        session.take_control()
+        control = session.firmware.control
+        found = [control.zero_uA, control.zero_samples, session.firmware.meter.current_uA]
+    """)
+    assert found == [12_000, 64, 0]
+
+
+def test_the_code_follows_the_readback_when_the_parts_are_off() -> None:
+    """The converter is one percent high: the trim brings the readback, not the code, to the set-point."""
+    found = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        for _ in range(12):
+            session.firmware.guard.quiet_steps = 0
+            for _ in range(140):
+                drawn = (session.board.bus.code - 124) * 82500 // 64 * 101 // 100
+                session.board.show(drawn, 12_000_000)
+                session.turns(1)
+        found = session.firmware.meter.current_uA
+    """)
+    assert found == pytest.approx(2_000_000, abs=2_000)
+
+
+def test_off_writes_code_zero_and_clamps() -> None:
+    found = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        session.ask(wire.DISABLE)
+        session.board.show(0, 12_000_000)
+        session.turns(2)
+        found = [session.board.bus.code, session.board.gate.released, session.firmware.machine.state]
+    """)
+    assert found == [0, False, 0]
+
+
+def test_a_conversion_that_is_not_ready_is_waited_for_and_not_taken() -> None:
+    found = on_board("""
+        session = Session()
+        session.sink(1_000_000)
+        session.board.bus.ready = False
+        session.board.show(3_500_000, 12_000_000)
+        session.turns(3)
+        waiting = [session.firmware.meter.current_uA, session.firmware.guard.fault]
+        session.board.show(1_010_000, 12_000_000)
+        session.board.bus.ready = True
+        session.turns(4)
+        found = [waiting, session.firmware.guard.fault]
+    """)
+    assert found == [[pytest.approx(1_000_000, abs=1500), 0], 0]
+
+
+HEAP_CHECK = """
+    session = Session()
+    session.sink(1_000_000)
+    {arrange}
+    firmware = session.firmware
+    # mem_total tells what heap_lock does not: a frame too large for the stack is taken from the heap.
+    wait = firmware.time.wait
+    step = firmware.control.step
+    wait(); step()
+    gc.collect()
+    total = micropython.mem_total()
+    total = micropython.mem_total()
+    micropython.heap_lock()
+    for _ in range({steps}):
+        wait()
+        step()
+    micropython.heap_unlock()
+    found = [micropython.mem_total() - total, firmware.guard.fault, firmware.meter.telemetry.pairs]
+"""
+
+ARRANGEMENTS = {
+    "sinking": "session.firmware.guard.quiet_steps = -10000",
+    "off": "session.ask(wire.DISABLE); session.board.show(0, 12_000_000)",
+    "source limits": "session.firmware.guard.quiet_steps = -10000; session.board.show(100_000, 50_000)",
+    "set-point changes": "session.firmware.guard.quiet_steps = -10000; session.firmware.control.ask(0)",
+    "over-current": "session.board.show(5_900_000, 12_000_000)",
+    "hot": "session.board.show(None, 12_000_000, 90_000)",
+    "host silent": "session.firmware.guard.quiet_steps = 1270",
+    "late": "session.board.clock.stall_us = 60_000",
+    "not ready": "session.board.bus.ready = False",
+    "other channel": "session.board.bus.converting = False",
+    "reversed": "session.board.show(0, -1_000_000)",
+    "extremes": "session.board.bus.counts[:] = [32767, -32768, 32767, -32768]",
+}
+
+
+@pytest.mark.parametrize("name", ARRANGEMENTS)
+def test_the_control_step_allocates_nothing(name: str) -> None:
+    """Under heap_lock, where an allocation raises, and by an unchanged mem_total."""
+    allocated, _, _ = on_board(HEAP_CHECK.format(arrange=ARRANGEMENTS[name], steps=400))
+    assert allocated == 0
+
+
+def test_the_heap_check_would_notice_an_allocation() -> None:
+    """The check itself is checked: a step that makes a list is found out."""
+    found = on_board("""
+        session = Session()
+        session.sink(1_000_000)
+        total = micropython.mem_total()
+        total = micropython.mem_total()
+        session.firmware.control.step()
+        [1, 2, 3]
+        found = micropython.mem_total() - total
+    """)
+    assert found > 0
