@@ -22,5 +22,5 @@ from stand_in_board import Board, Session, IMAGE
 def on_board(lines: str, *, heapsize: str | None = None) -> Any:
     """Carry out `lines` on the board and return `found`."""
     script = _PRELUDE + dedent(lines) + "\nprint(json.dumps(found))\n"
-    printed = run_micropython(script, heapsize=heapsize, extra_path=[Path(__file__).parent])
+    printed = run_micropython(script, heapsize=heapsize, extra_path=[Path(__file__).parent / "stand_in"])
     return json.loads(printed.splitlines()[-1])
