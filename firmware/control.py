@@ -42,7 +42,11 @@ class Control:
         self._meter = meter
         self._time = timekeeper
         self._junction = junction
-        self._inputs = bytes([image["adc"]["inputs"][name] for name in ("voltage", "current", "heatsink", "force")])
+        # What each turn of the schedule converts, and who takes its result.
+        inputs = [image["adc"]["inputs"][name] for name in ("voltage", "current", "heatsink", "force")]
+        takers = (self._take_voltage, self._take_current, self._take_heatsink, self._take_force)
+        self._input_at = bytes([inputs[kind] for kind in _SCHEDULE])
+        self._taker_at = [takers[kind] for kind in _SCHEDULE]
         self._margin_uA = image["demand_margin_uA"]
         self._period_us = image["period_us"]
         self._turn = 0
@@ -52,6 +56,7 @@ class Control:
         self.setpoint_uA = 0
         self.demand_uA = 0
         self._demand_before_uA = 0
+        self._steady = False
         self.limiting = wire.LIMITING_NONE
         self._short_pairs = 0
         self.zero_uA = 0
@@ -65,21 +70,21 @@ class Control:
 
     def step(self):
         self._guard.step(self._time.tick())
-        self._meter.step()
+        self._meter.steps += 1
         self.using = wire.FAULT_ADC_SILENT
         if self._converting:
             self._collect()
         else:
             self._begin()
-        self._estimate_junction()
+        self._odd = not self._odd
+        if self._odd:
+            self._estimate_junction()
         self.using = wire.FAULT_DAC_SILENT
         self._drive()
 
     def _estimate_junction(self):
-        self._odd = not self._odd
-        if self._odd:
-            self._junction.step(self._meter.power_uW // 1000)
-            self._guard.on_junction(self.junction_mC())
+        self._junction.step(self._meter.power_uW // 1000)
+        self._guard.on_junction(self.junction_mC())
 
     def junction_mC(self):
         return self._meter.heatsink_mC + self._junction.rise_mK
@@ -87,7 +92,7 @@ class Control:
     # -- reading ------------------------------------------------------------------------------------------------
 
     def _begin(self):
-        self._adc.begin(self._inputs[_SCHEDULE[self._turn]])
+        self._adc.begin(self._input_at[self._turn])
         self._converting = True
 
     def _collect(self):
@@ -95,19 +100,12 @@ class Control:
         if counts < LOWEST_COUNTS:
             self._missed(counts)
             return
-        self._guard.on_conversion()
-        kind = _SCHEDULE[self._turn]
-        self._turn = (self._turn + 1) % _TURNS
+        self._guard.not_ready = 0
+        turn = self._turn
+        self._turn = (turn + 1) % _TURNS
         # The next conversion gets the whole rest of the period.
-        self._begin()
-        if kind == _CURRENT:
-            self._take_current(self._current.reading(counts))
-        elif kind == _VOLTAGE:
-            self._take_voltage(self._voltage.reading(counts))
-        elif kind == _HEATSINK:
-            self._take_heatsink(counts)
-        else:
-            self._meter.force_uV = self._force.reading(counts)
+        self._adc.begin(self._input_at[self._turn])
+        self._taker_at[turn](counts)
 
     def _missed(self, counts):
         """Not ready: look again a step later. Anything else: ask anew, which also revives a part that was reset."""
@@ -115,9 +113,13 @@ class Control:
         if counts != NOT_READY:
             self._begin()
 
-    def _take_current(self, nominal_uA):
+    def _take_current(self, counts):
+        nominal_uA = self._current.reading(counts)
         current_uA = nominal_uA - self.zero_uA
-        self._guard.on_current(nominal_uA, current_uA, max(self.demand_uA, self._demand_before_uA))
+        demand_uA = self.demand_uA
+        if self._demand_before_uA > demand_uA:
+            demand_uA = self._demand_before_uA
+        self._guard.on_current(nominal_uA, current_uA, demand_uA)
         self._demand_before_uA = self.demand_uA
         self._meter.take_current(current_uA)
         if self._machine.state == wire.STATE_OFF and self._guard.settled_off():
@@ -126,7 +128,8 @@ class Control:
             self._zero_count = 0
             self._zero_sum = 0
 
-    def _take_voltage(self, voltage_uV):
+    def _take_voltage(self, counts):
+        voltage_uV = self._voltage.reading(counts)
         self._guard.on_voltage(voltage_uV)
         if self._meter.take_voltage(voltage_uV):
             self._guard.on_power(self._meter.power_uW)
@@ -136,6 +139,9 @@ class Control:
         heatsink_mC = self._thermistor.reading(counts)
         self._meter.heatsink_mC = heatsink_mC
         self._guard.on_heatsink(counts, heatsink_mC)
+
+    def _take_force(self, counts):
+        self._meter.force_uV = self._force.reading(counts)
 
     def _gather_zero(self, nominal_uA):
         # 64 readings of less than 2**24 uA each.
@@ -183,6 +189,7 @@ class Control:
         if abs(error_uA) << 6 > self._demand.uA_per_code_x64:
             bound = (self.setpoint_uA >> 4) + (self._margin_uA >> 1)
             self._trim_uA = min(max(self._trim_uA + error_uA, -bound), bound)
+            self._steady = False
 
     def _restart_trim(self):
         self._trim_sum = 0
@@ -201,25 +208,27 @@ class Control:
         self._demand_before_uA = 0
         self._trim_uA = 0
         self._short_pairs = 0
+        self._steady = False
         self._restart_trim()
 
     def _drive(self):
         if self._machine.state != wire.STATE_SINKING:
             self.demand_uA = 0
             self._write(0)
-            return
-        self._ramp()
-        # The zero in force is the sense amplifier's error at nothing, so the demand must be raised by it.
-        self._write(self._demand.code(self.demand_uA + self.zero_uA + self._trim_uA))
+        elif self.demand_uA != self.setpoint_uA or not self._steady:
+            self._ramp()
 
     def _ramp(self):
-        slew_uA = self._guard.slew_uA_per_step
         change = self.setpoint_uA - self.demand_uA
+        slew_uA = self._guard.slew_uA_per_step
         if change > slew_uA:
             change = slew_uA
         elif change < -slew_uA:
             change = -slew_uA
         self.demand_uA += change
+        self._steady = True
+        # The zero in force is the sense amplifier's error at nothing, so the demand must be raised by it.
+        self._write(self._demand.code(self.demand_uA + self.zero_uA + self._trim_uA))
 
     def _write(self, code):
         if code != self._code:

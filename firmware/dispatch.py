@@ -60,15 +60,10 @@ class Dispatch:
             wire.BEAT: (wire.BEAT_FORMAT, "control", self._beat),
         }
 
-    def service(self):
-        """Between control steps: take at most one frame."""
-        content = self._link.poll()
-        if content is not None:
-            self._take(content)
-
     # -- the rules of the conversation --------------------------------------------------------------------------
 
-    def _take(self, content):
+    def take(self, content):
+        """One frame's content, whose check sequence held."""
         version, command, session, sequence, length = struct.unpack_from(wire.HEADER_FORMAT, content)
         payload = content[_HEADER_SIZE:]
         if length != len(payload):

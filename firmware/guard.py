@@ -64,10 +64,10 @@ class Guard:
         self.news = False
         self.quiet_steps = 0
         self.clamped_steps = 0
-        self._not_ready = 0
+        #: Conversions in a row without a result; whoever gets one sets it back.
+        self.not_ready = 0
         self._off_readings = 0
         self._thermistor_counts = 0
-        self._bus_failed = False
         self._junction_mC = 0
 
     def apply(self, limits):
@@ -125,7 +125,7 @@ class Guard:
 
     def on_current(self, nominal_uA, current_uA, demand_uA):
         """`nominal_uA` is scaled by the parts' values alone; the worse of the two counts."""
-        worse = max(nominal_uA, current_uA)
+        worse = nominal_uA if nominal_uA > current_uA else current_uA
         if worse > self._current_trip_uA:
             self.latch(wire.FAULT_OVER_CURRENT, worse, self._current_trip_uA)
         if self._machine.state == wire.STATE_SINKING:
@@ -167,19 +167,14 @@ class Guard:
         if junction_mC > self.limits.junction_mC:
             self.latch(wire.FAULT_JUNCTION_HOT, junction_mC, self.limits.junction_mC)
 
-    def on_conversion(self):
-        self._not_ready = 0
-        self._bus_failed = False
-
     def on_no_conversion(self, not_ready, config_seen):
         """The converter answered without a result: at once a fault when it converts something else."""
-        self._not_ready += 1
-        if not not_ready or self._not_ready > _NOT_READY_ALLOWED:
-            self._bus_failed = True
+        self.not_ready += 1
+        if not not_ready or self.not_ready > _NOT_READY_ALLOWED:
             self.latch(wire.FAULT_ADC_NOT_CONVERTING, config_seen, 0)
 
     def on_bus_error(self, fault, error_number):
-        self._bus_failed = True
+        self.not_ready = 1
         self.latch(fault, error_number, 0)
 
     def standing(self):
@@ -199,4 +194,4 @@ class Guard:
             return self._thermistor_counts >= self._thermistor["open_counts"]
         if fault == wire.FAULT_THERMISTOR_SHORT:
             return self._thermistor_counts <= self._thermistor["short_counts"]
-        return self._bus_failed
+        return self.not_ready > 0

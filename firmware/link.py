@@ -1,8 +1,8 @@
 """Frames over the board's byte stream, after RFC 1662: flags, byte stuffing and the check sequence.
 
-What a frame means is not decided here; a frame that comes out of `poll` has a good check sequence and at least a
-whole header. Nothing here ever waits: reading takes what is there, sending needs room for the whole frame. Buffers
-are bounded and made once. Runs between control steps and may allocate.
+What a frame means is not decided here; a frame that comes out of `poll` has a good check sequence and at
+least a whole header. Nothing here ever waits: reading takes what is there, sending needs room for the whole
+frame. Buffers are bounded and made once. Runs between control steps and may allocate.
 """
 
 import binascii
@@ -15,7 +15,8 @@ import wire
 _FLAG = b"\x7e"
 _ESCAPE = b"\x7d"
 # Octets that must not appear in a frame, and what stands for them (RFC 1662 section 4.2: 7D, then the octet
-# exclusive-or 20). 03 is in the map because a terminal's Ctrl-C must always mean Ctrl-C and never occur by chance.
+# exclusive-or 20). 03 is in the map because a terminal's Ctrl-C must always mean Ctrl-C and never occur by
+# chance.
 _STUFFED_ESCAPE = b"\x7d\x5d"
 _STUFFED_FLAG = b"\x7d\x5e"
 _INTERRUPT = b"\x03"
@@ -122,7 +123,7 @@ def _unstuff(segment):
 
 
 def _is_text(segment):
-    """Whether a person or a program has typed this: UTF-8 without control characters but line ends and tabs."""
+    """Whether this was typed: UTF-8 without control characters other than line ends and tabs."""
     for octet in segment:
         if octet < 0x20 and octet not in b"\t\r\n" or octet == 0x7F:
             return False

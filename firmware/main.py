@@ -17,7 +17,7 @@ from control import Control
 from dispatch import Dispatch
 from guard import Guard
 from link import Link
-from meter import Meter
+from meter import LARGEST_CURRENT_uA, LARGEST_VOLTAGE_uV, Meter
 from runlog import RunLog
 from scaling import Demand, Scale, Thermistor
 from states import Machine
@@ -26,6 +26,8 @@ from thermal import Junction
 from timekeeper import Timekeeper
 
 _LOG_ENTRIES = const(4000)
+#: The run log is served every so many turns: a second holds 25 of them.
+_SLICES = const(16)
 _ALLOCATED_BEFORE_COLLECTING = const(16 * 1024)
 
 
@@ -66,6 +68,7 @@ class Firmware:
             self.telemetry,
             self.log,
         )
+        self._slice = 0
         self.telemetry.tell(wire.EVENT_BOOT, board.reset_cause)
 
     def turn(self):
@@ -78,15 +81,24 @@ class Firmware:
 
     def service(self):
         """What may wait, in bounded slices."""
-        self.dispatch.service()
-        if self.log.running and self.machine.state != wire.STATE_SINKING:
-            self.log.end()
-        self.log.service()
+        content = self.link.poll()
+        if content is not None:
+            self.dispatch.take(content)
         self.telemetry.service()
+        self._slice = (self._slice + 1) % _SLICES
+        if not self._slice:
+            self.log.service(self.machine.state == wire.STATE_SINKING)
 
 
 def _scales(image):
     scales = {name: Scale(image["scales"][name]) for name in ("voltage", "current", "force")}
+    for name, largest in (
+        ("voltage", LARGEST_VOLTAGE_uV),
+        ("force", LARGEST_VOLTAGE_uV),
+        ("current", LARGEST_CURRENT_uA),
+    ):
+        if scales[name].largest() > largest:
+            raise ValueError("the " + name + " scale passes what the meter can hold")
     scales["thermistor"] = Thermistor(image["thermistor"])
     return scales
 

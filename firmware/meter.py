@@ -13,9 +13,11 @@ _LIMB_MASK = const((1 << 26) - 1)
 _SUM_BITS = const(12)
 _SUM_MASK = const((1 << 12) - 1)
 _FAR = const(0x3FFFFFFF)
-#: Readings are held within these, so that a product of the two stays a small integer.
-_LARGEST_VOLTAGE_mV = const(80_000)
-_LARGEST_CURRENT_mA = const(12_000)
+#: What the scales may give at most (main checks it at boot), so that a product of the two stays a small integer.
+LARGEST_VOLTAGE_uV = const(80_000_000)
+LARGEST_CURRENT_uA = const(12_000_000)
+#: A pair stands for the two or three steps since the one before, and for no more than these after a stall.
+_MOST_STEPS = const(8)
 
 
 class Limbs:
@@ -86,15 +88,12 @@ def power_uW(voltage_uV, current_uA):
     return voltage_mV * current_mA + small // 1000
 
 
-def _held(value, largest):
-    return min(max(value, -largest), largest)
-
-
 class Meter:
     def __init__(self, period_us):
         self._period_us = period_us
         self._current_is_fresh = False
-        self._steps = 0
+        #: Control steps since the last pair; the control step counts them up.
+        self.steps = 0
         self.counting = False
         self.voltage_uV = 0
         self.current_uA = 0
@@ -106,20 +105,17 @@ class Meter:
         self.telemetry = Window()
         self.log = Window()
 
-    def step(self):
-        self._steps += 1
-
     def take_current(self, current_uA):
-        self.current_uA = _held(current_uA, _LARGEST_CURRENT_mA * 1000)
+        self.current_uA = current_uA
         self._current_is_fresh = True
 
     def take_voltage(self, voltage_uV):
         """Return whether this voltage completed a pair."""
-        voltage_uV = _held(voltage_uV, _LARGEST_VOLTAGE_mV * 1000)
         before = self.voltage_uV
         self.voltage_uV = voltage_uV
         self.telemetry.see_voltage(voltage_uV)
-        self.log.see_voltage(voltage_uV)
+        if self.counting:
+            self.log.see_voltage(voltage_uV)
         if not self._current_is_fresh:
             return False
         self._current_is_fresh = False
@@ -131,16 +127,21 @@ class Meter:
         power = power_uW(voltage_uV, current_uA)
         self.power_uW = power
         self.telemetry.add(voltage_uV, current_uA)
-        self.log.add(voltage_uV, current_uA)
         if self.counting:
+            self.log.add(voltage_uV, current_uA)
             self._count(current_uA, power)
-        self._steps = 0
+        self.steps = 0
 
     def _count(self, current_uA, power):
-        # A pair stands for the two or three steps since the one before, and for no more than eight after a stall.
-        # Power times steps could pass 2**30, so it is added step by step.
-        for _ in range(min(self._steps, 8)):
-            self.charge.add(current_uA)
+        steps = self.steps
+        if steps > _MOST_STEPS:
+            steps = _MOST_STEPS
+        self.charge.add(current_uA * steps)
+        if power < _FAR // _MOST_STEPS:
+            self.energy.add(power * steps)
+            return
+        # The product would pass 2**30.
+        for _ in range(steps):
             self.energy.add(power)
 
     def restart(self):

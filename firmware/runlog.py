@@ -10,7 +10,7 @@ from array import array
 from micropython import const
 
 _FIRST_SPACING_ms = const(1_000)
-_MERGES_PER_SLICE = const(16)
+_MERGES_PER_SLICE = const(64)
 _LOWEST_cC = const(-32768)
 _HIGHEST_cC = const(32767)
 
@@ -45,38 +45,27 @@ class RunLog:
         self._meter.log.restart()
         self.running = True
 
-    def end(self):
-        """The run is over: what was gathered since the last entry becomes one more."""
-        if not self.running:
-            return
-        self.running = False
-        while self._merging:
-            self._merge_slice()
-        if self._meter.log.pairs:
-            self._append(self.elapsed_ms())
-
     def elapsed_ms(self):
         return (self._time.seconds - self._started_s) * 1000 + self._time.micros // 1000 - self._started_ms
 
-    def service(self):
-        """Between control steps: append when due, merge a slice when full."""
+    def service(self, sinking):
+        """Every few control steps: append when due, merge a slice when full, close when the load is off."""
         if self._merging:
             self._merge_slice()
-            return
-        if not self.running or self.elapsed_ms() < self._due_ms or not self._meter.log.pairs:
-            return
-        self._append(self.elapsed_ms())
-        self._due_ms += self.spacing_ms
-        if self.entries == self.capacity:
-            self._merging = True
-            self._merged = 0
+        elif self.running and not sinking:
+            self.running = False
+            self._append()
+        elif self.running and self.elapsed_ms() >= self._due_ms:
+            self._append()
+            self._due_ms += self.spacing_ms
 
-    def _append(self, time_ms):
-        if self.entries == self.capacity:
-            return
+    def _append(self):
+        """What the meter's window has gathered becomes an entry."""
         window = self._meter.log
+        if not window.pairs:
+            return
         at = self.entries
-        self.time_ms[at] = time_ms
+        self.time_ms[at] = self.elapsed_ms()
         self.voltage_uV[at] = window.voltage_uV()
         self.voltage_min_uV[at] = window.voltage_min_uV
         self.voltage_max_uV[at] = window.voltage_max_uV
@@ -85,6 +74,9 @@ class RunLog:
         self.charge_mC[at] = max(self._meter.charge_uC() // 1000, 0)
         self.entries = at + 1
         window.restart()
+        if self.entries == self.capacity:
+            self._merging = True
+            self._merged = 0
 
     def _merge_slice(self):
         for _ in range(_MERGES_PER_SLICE):

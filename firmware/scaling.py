@@ -22,6 +22,10 @@ class Scale:
         self._whole = entry["whole"]
         self._part = entry["part"]
 
+    def largest(self):
+        """The largest magnitude that any 16-bit code can give; may be a big integer, so not for the step."""
+        return max(abs(self.reading(-32768)), abs(self.reading(32767)))
+
     def reading(self, counts):
         counts -= self._zero_counts
         return counts * self._whole + ((counts * self._part + _HALF) >> _PART_BITS)

@@ -22,7 +22,8 @@ class Junction:
         """`stages`, quickest first, each with r_mK_per_W, every_steps (a power of two from 2 to 512) and
         share_x32768, the part of the way that it goes in every_steps control steps."""
         self._resistance_mK_per_W = array("i", [stage["r_mK_per_W"] for stage in stages])
-        self._largest_mW = array("i", [_LARGEST_RISE_uK // stage["r_mK_per_W"] for stage in stages])
+        # Held below 2**30 for any power a shorted transistor could show; the guard has tripped long before.
+        self._largest_mW = _LARGEST_RISE_uK // max([stage["r_mK_per_W"] for stage in stages])
         self._share = array("i", [stage["share_x32768"] for stage in stages])
         self._rise_uK = array("i", [0] * len(stages))
         every_turns = [stage["every_steps"] >> 1 for stage in stages]
@@ -34,6 +35,8 @@ class Junction:
 
     def step(self, power_mW):
         """Two control steps at `power_mW`; `rise_mK` is then the junction's rise above the sensor."""
+        if power_mW > self._largest_mW:
+            power_mW = self._largest_mW
         self._turn = (self._turn + 1) % _TURNS
         for stage in range(self._quick):
             self._advance(stage, power_mW)
@@ -43,14 +46,10 @@ class Junction:
         self.rise_mK = self._total_uK // 1000
 
     def _advance(self, stage, power_mW):
-        delta = self._target_uK(stage, power_mW) - self._rise_uK[stage]
-        change = ((delta >> _DELTA_BITS) * self._share[stage]) >> (_SHARE_BITS - _DELTA_BITS)
-        self._rise_uK[stage] += change
-        self._total_uK += change
-
-    def _target_uK(self, stage, power_mW):
-        # Held below 2**30 for any power a shorted transistor could show; the guard has tripped long before.
-        return self._resistance_mK_per_W[stage] * min(power_mW, self._largest_mW[stage])
+        delta_uK = self._resistance_mK_per_W[stage] * power_mW - self._rise_uK[stage]
+        change_uK = ((delta_uK >> _DELTA_BITS) * self._share[stage]) >> (_SHARE_BITS - _DELTA_BITS)
+        self._rise_uK[stage] += change_uK
+        self._total_uK += change_uK
 
 
 def _slow_turns(every_turns):

@@ -1,7 +1,7 @@
 """The numbers of the wire: ids, `struct` formats and codes of every message.
 
-Generated from protocol/sinkwright_wire by `python -m sinkwright_wire.generate`: never edit it here. The names above
-a format are its fields in their order; their meaning stands in protocol/REFERENCE.md.
+Generated from protocol/sinkwright_wire by `python -m sinkwright_wire.generate`: never edit it here. The
+names above a format are its fields in their order; their meaning stands in protocol/REFERENCE.md.
 """
 
 from micropython import const
