@@ -11,11 +11,8 @@ import struct
 import states
 import wire
 
-_HEADER_SIZE = struct.calcsize(wire.HEADER_FORMAT)
 _LIMIT_FIELDS = 7
-_ENTRIES_PER_REPLY = 4
 _FIRMWARE = (0, 1, 0)
-_NOBODY_HEARD = 0xFFFFFFFF
 _HALF_THE_NUMBERS = 0x8000
 
 
@@ -65,7 +62,7 @@ class Dispatch:
     def take(self, content):
         """One frame's content, whose check sequence held."""
         version, command, session, sequence, length = struct.unpack_from(wire.HEADER_FORMAT, content)
-        payload = content[_HEADER_SIZE:]
+        payload = content[wire.HEADER_SIZE:]
         if length != len(payload):
             return
         if session == self._controller and session:
@@ -124,7 +121,7 @@ class Dispatch:
     # -- hello --------------------------------------------------------------------------------------------------
 
     def _hello(self, session, sequence, wire_version, watch):
-        other_heard_ms = _NOBODY_HEARD
+        other_heard_ms = wire.NEVER_HEARD
         if watch:
             if session == self._controller:
                 self._controller = 0
@@ -146,7 +143,7 @@ class Dispatch:
             *_FIRMWARE,
             board.boot_number,
             board.board_id,
-            board.image["name"].encode(),
+            _cut(board.image["name"], 16),
             session != 0 and session == self._controller,
             other_heard_ms,
         )
@@ -162,7 +159,7 @@ class Dispatch:
             0,
             self._board.reset_cause,
             self._log.capacity,
-            self._board.interpreter.encode()[:32],
+            _cut(self._board.interpreter, 32),
         )
 
     def _get_limits(self, which):
@@ -213,7 +210,7 @@ class Dispatch:
     def _get_log(self, first):
         log = self._log
         entries = b""
-        for at in range(first, min(first + _ENTRIES_PER_REPLY, log.entries)):
+        for at in range(first, min(first + wire.MAX_ENTRIES, log.entries)):
             entries += struct.pack(
                 wire.LOG_ENTRY_FORMAT,
                 log.time_ms[at],
@@ -289,3 +286,10 @@ class Dispatch:
 
     def _beat(self):
         """Only to be heard."""
+
+
+def _cut(text, size):
+    """`text` in UTF-8, cut at a whole character: half of one would make the host discard the reply."""
+    while len(text.encode()) > size:
+        text = text[:-1]
+    return text.encode()

@@ -1,7 +1,7 @@
 """A load and a Thevenin source in a few lines, with the methods of Instrument that procedures use.
 
-For tests of what a procedure decides; the true firmware on a simulated board is tested elsewhere. Time passes only
-in `next_sample` and `pause`.
+For tests of what a procedure decides; the true firmware on a simulated board is tested elsewhere. Time
+passes only in `next_sample` and `pause`.
 """
 
 from __future__ import annotations
@@ -23,7 +23,7 @@ FLOOR_ohm = 0.075
 
 @dataclass
 class FakeSource:
-    """`limit_kind` as in a source file; `latched` needs a while without current to come back, or never does."""
+    """`limit_kind` as in a source file; a latched one comes back without load, or never."""
 
     open_V: float = 12.0
     resistance_ohm: float = 0.05
@@ -33,19 +33,22 @@ class FakeSource:
     comes_back: bool = True
     leads_ohm: float = 0.0
     latched: bool = False
+    _folded: bool = False
     #: Volts added at each frame, by its number: a source that never settles.
     wander: Callable[[int], float] = lambda number: 0.0
 
     def under(self, demand_A: float) -> tuple[float, float]:
         """(V, A) at the source's terminals for a demanded current; beyond the limit the load is fully on."""
         if demand_A <= 0:
-            if self.latched and self.comes_back:
-                self.latched = False
+            self.latched = self.latched and not self.comes_back
+            self._folded = False
             return (0.0 if self.latched else self.open_V), 0.0
         if self.latched:
             return 0.0, 0.0
-        limit_A = self._limit_at(self.open_V)
-        if limit_A is None or demand_A <= limit_A:
+        # Once folded back, constant current keeps a source at its lower stable point (reference sheet, section 5).
+        limit_A = self._limit_at(0.0 if self._folded else self.open_V)
+        self._folded = limit_A is not None and demand_A > limit_A
+        if not self._folded:
             return self.open_V - demand_A * self.resistance_ohm, demand_A
         if self.limit_kind == "latch":
             self.latched = True
@@ -85,7 +88,7 @@ class FakeInstrument:
         self.limits_in_force = LoadLimits(4.0, 30.0, 40.0, 85.0, 125.0, 400.0, 3.0)
         self.calls: list[str] = []
 
-    # -- what procedures call -----------------------------------------------------------------------------------
+    # -- what procedures call -----------------------------------------------------------------------------
 
     async def set_current(self, current_A: float) -> None:
         self.calls.append(f"set {current_A:.3f}")
@@ -120,7 +123,9 @@ class FakeInstrument:
     async def fault(self) -> FaultDescription | None:
         if self.fault_code == Fault.NONE:
             return None
-        return FaultDescription(self.fault_code, self.fault_code.sentence, 86.0, 85.0, "°C", True, self.time_us)
+        return FaultDescription(
+            self.fault_code, self.fault_code.sentence, 86.0, 85.0, "°C", True, self.time_us
+        )
 
     async def pause(self, duration_s: float) -> None:
         self.time_us += round(duration_s * 1e6)
@@ -141,7 +146,7 @@ class FakeInstrument:
         self.fault_code = fault
         self.sinking = False
 
-    # -- the physics --------------------------------------------------------------------------------------------
+    # -- the physics --------------------------------------------------------------------------------------
 
     def _sample(self) -> Sample:
         demand_A = self.demand_A if self.sinking else 0.0
