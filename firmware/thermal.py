@@ -13,7 +13,8 @@ from micropython import const
 
 _TURNS = const(256)
 _SHARE_BITS = const(15)
-_DELTA_BITS = const(8)
+_HALF_BITS = const(14)
+_HALF_MASK = const((1 << 14) - 1)
 _LARGEST_RISE_uK = const(400_000_000)
 
 
@@ -46,8 +47,10 @@ class Junction:
         self.rise_mK = self._total_uK // 1000
 
     def _advance(self, stage, power_mW):
+        # In two halves, so that neither product passes 2**30, however far the stage has to go.
         delta_uK = self._resistance_mK_per_W[stage] * power_mW - self._rise_uK[stage]
-        change_uK = ((delta_uK >> _DELTA_BITS) * self._share[stage]) >> (_SHARE_BITS - _DELTA_BITS)
+        change_uK = (delta_uK >> _HALF_BITS) * self._share[stage] >> _SHARE_BITS - _HALF_BITS
+        change_uK += (delta_uK & _HALF_MASK) * self._share[stage] >> _SHARE_BITS
         self._rise_uK[stage] += change_uK
         self._total_uK += change_uK
 

@@ -62,3 +62,11 @@ def test_an_absurd_power_leaves_every_intermediate_a_small_integer() -> None:
         found = junction.rise_mK
     """)
     assert 0 < rise_mK * 1000 < 4 * 400_000_000
+
+
+def test_the_halves_of_a_product_stay_small_at_the_largest_jump() -> None:
+    """The largest jump is from nothing to 400 K; each half times the largest share must fit 31 bits, signed."""
+    jump_uK = 400_000_000
+    for delta in (jump_uK, -jump_uK):
+        assert abs((delta >> 14) * 32768) < 2**30
+        assert (delta & (1 << 14) - 1) * 32768 < 2**30

@@ -17,15 +17,17 @@ FIRMWARE = ROOT / "firmware"
 #: From the ground up: a layer imports itself and what stands before it, never what stands after it.
 LAYERS = (
     ("errors", "stopping", "units", "results", "sample", "thermistor", "wire_units", "firmware_files"),
+    ("demo", "templates"),
     ("definitions", "uncertainty"),
     ("board_image", "records", "refusals", "readings"),
     ("simulator", "reports"),
-    ("transport", "discovery", "last_known"),
+    ("transport", "last_known"),
     ("link_failures", "link"),
+    ("discovery",),
     ("instrument", "runner"),
     ("blocking",),
     ("procedures",),
-    ("demo", "templates", "cli", "__main__"),
+    ("cli", "__main__"),
 )
 LEVEL = {name: level for level, names in enumerate(LAYERS) for name in names}
 
@@ -53,7 +55,8 @@ def imports(path: Path, *, top_level_only: bool = False) -> Iterator[str]:
         if isinstance(node, ast.Import):
             yield from (alias.name for alias in node.names)
         elif isinstance(node, ast.ImportFrom) and node.level:
-            package = path.relative_to(HOST.parent).parts[: -node.level]
+            root = HOST.parent if HOST in path.parents else ROOT / "protocol"
+            package = path.relative_to(root).parts[: -node.level]
             base = ".".join((*package, *([node.module] if node.module else [])))
             yield base
             yield from (f"{base}.{alias.name}" for alias in node.names)

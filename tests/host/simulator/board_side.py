@@ -16,7 +16,9 @@ _PREFACE = "from nominal_board import World, near, ntc_ohm, plant\nimport math\n
 
 
 def check(script: str) -> str:
-    """Run `script` (assertions) under MicroPython, with `World`, `plant`, `near`, `ntc_ohm`; return what it printed."""
+    """Run `script` (assertions) under MicroPython, with `World`, `plant`, `near`, `ntc_ohm`; return what it
+    printed.
+    """
     return run_micropython(_PREFACE + script, extra_path=(BOARD_SIDE, HERE))
 
 

@@ -5,7 +5,8 @@
 
 import math
 
-# R = R25*exp(A + B/T + C/T^2 + D/T^3), Vishay NTCLE100E3 (doc 29049), coefficients as in reference.md section 3.
+# R = R25*exp(A + B/T + C/T^2 + D/T^3), Vishay NTCLE100E3 (doc 29049), coefficients as in reference.md
+# section 3.
 NTC = (-14.6337, 4791.842, -115334.0, -3.730535e6)
 
 IMAGE = {
@@ -120,8 +121,12 @@ class World:
     def current_A(self):
         return (self.convert(0) * 125e-6 - 0.1) / 0.625
 
-    def junction_degC(self):
+    def look(self):
+        """Bring every state to this moment; a world at rest is otherwise left alone for a while."""
         self.plant.disturb(1)
+
+    def junction_degC(self):
+        self.look()
         return self.plant.heat.junction_degC
 
 

@@ -14,22 +14,27 @@ SUPPLY = '{"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, %s}'
 )
 def test_a_supply_obeys_ohms_law(voltage: float, resistance: float) -> None:
     """Source: V = Voc - I*R."""
-    script = """
-world = World({"kind": "supply", "voltage_V": %r, "resistance_ohm": %r})
+    script = (
+        f"voltage, resistance = {voltage}, {resistance}\n"
+        + """
+world = World({"kind": "supply", "voltage_V": voltage, "resistance_ohm": resistance})
 for ampere in (0.1, 0.5, 1.0, 1.8):
     true_A = world.sink(ampere)
     world.run_s(0.05)
     near(world.plant.current_A, true_A, 1e-5)
-    near(world.plant.source_V, %r - true_A * %r, 1e-4)
-    near(world.voltage_V(), %r - true_A * %r, 0.5 * 125e-6 * 11 + 1e-4)  # half a count, at the terminals
+    near(world.plant.source_V, voltage - true_A * resistance, 1e-4)
+    near(world.voltage_V(), voltage - true_A * resistance, 0.5 * 125e-6 * 11 + 1e-4)  # half a count
     near(world.current_A(), true_A, 0.5 * 125e-6 / 0.625 + 1e-5)
-""" % (voltage, resistance, voltage, resistance, voltage, resistance)
+"""
+    )
     check(script)
     check_under_cpython(script)
 
 
 def test_a_resistive_source_is_pulled_to_the_floor_of_the_transistor() -> None:
-    """Source: two resistances in series; 50 mohm on-resistance and 25 mohm sense resistor are the load's least."""
+    """Source: two resistances in series; 50 mohm on-resistance and 25 mohm sense resistor are the load's
+    least.
+    """
     check("""
 world = World({"kind": "supply", "voltage_V": 1.0, "resistance_ohm": 0.425})
 world.sink(4.0)
@@ -42,7 +47,8 @@ near(world.plant.drive_A, 44.0, 1e-9)  # the amplifier sits at its rail
 
 def test_a_constant_limit_holds_the_current_down_to_the_floor() -> None:
     check("""
-for extra in ({}, {"capacitance_F": 470e-6}, {"capacitance_F": 470e-6, "inductance_H": 1e-6}, {"leads_inductance_H": 2e-6}):
+for extra in ({}, {"capacitance_F": 470e-6}, {"capacitance_F": 470e-6, "inductance_H": 1e-6},
+              {"leads_inductance_H": 2e-6}):
     source = {"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, "limit_A": 2.5}
     source.update(extra)
     world = World(source)
@@ -62,7 +68,8 @@ for extra in ({}, {"capacitance_F": 470e-6}, {"capacitance_F": 470e-6, "inductan
 def test_an_output_capacitance_discharges_by_the_excess_over_the_limit() -> None:
     """Source: C*dV/dt = I_limit - I: 10 mF and 1 A too much fall by 1 V in 10 ms."""
     check("""
-world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.01, "limit_A": 1.0, "capacitance_F": 0.01})
+source = {"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.01, "limit_A": 1.0, "capacitance_F": 0.01}
+world = World(source)
 world.sink(0.9)
 world.run_s(0.05)
 true_A = world.demand(2.0)
@@ -75,8 +82,9 @@ near((first - world.plant.source_V) / 0.05, (true_A - 1.0) / 0.01, 0.2)
 
 @pytest.mark.parametrize("capacitance", ["", '"capacitance_F": 470e-6'])
 def test_a_foldback_limit_follows_its_line_and_returns_only_below_it(capacitance: str) -> None:
-    """Source: the line of the source file, limit(V) = foldback_A + (limit_A - foldback_A)*V/voltage_V, met with the
-    load's floor V = I*R: I = foldback_A / (1 - (limit_A - foldback_A)*R/voltage_V)."""
+    """Source: the line of the source file, limit(V) = foldback_A + (limit_A - foldback_A)*V/voltage_V, met
+    with the load's floor V = I*R: I = foldback_A / (1 - (limit_A - foldback_A)*R/voltage_V).
+    """
     check(
         """
 source = %s
@@ -102,7 +110,8 @@ near(world.plant.source_V, 12.0 - 0.1 * world.plant.current_A, 1e-3)
 
 def test_a_latched_supply_returns_after_one_second_without_load() -> None:
     check("""
-world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, "limit_A": 2.5, "limit_kind": "latch"})
+source = {"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, "limit_A": 2.5, "limit_kind": "latch"}
+world = World(source)
 world.sink(2.4)
 world.run_s(0.1)
 near(world.plant.source_V, 12.0 - 0.1 * world.plant.current_A, 1e-3)
@@ -159,6 +168,7 @@ near(world.plant.source_V, 3.7 - true_A * (0.03 + 0.010 * (1 - math.exp(-0.1))),
 for total_s in (0.05, 1.0, 10.0, 30.0, 90.0):
     while world.plant.now < total_s * 1e6:
         world.run_s(min(0.00235, total_s - world.plant.now * 1e-6))
+    world.look()
     slow = 0.015 * (1.0 - math.exp(-total_s / 30.0))
     fast = 0.010 * (1.0 - math.exp(-total_s / 0.010))
     near(world.plant.source_V, 3.7 - true_A * (0.03 + slow + fast), 5e-5)
@@ -177,17 +187,21 @@ near(world.plant.source_V, 3.7, 1e-9)
 true_A = world.sink(1.0)
 for seconds in (0.3, 0.5, 0.5, 0.45):
     world.run_s(seconds)
+    world.look()
     x = world.plant.source.state_of_charge
     table = 3.4 + (x - 0.1) * 0.75 if x > 0.1 else 2.9 + 5.0 * x
     near(world.plant.source_V, table - 0.001 * true_A, 1e-3)
 world.run_s(0.4)
+world.look()
 assert world.plant.source.state_of_charge < 0.0
 assert 0.0 < world.plant.source_V < 2.9
 """)
 
 
 def test_a_curve_is_met_where_it_crosses_the_load() -> None:
-    """Source: linear interpolation by hand; below the short-circuit current the voltage, above it the floor."""
+    """Source: linear interpolation by hand; below the short-circuit current the voltage, above it the
+    floor.
+    """
     script = """
 world = World({"kind": "curve", "points": [[0.0, 0.76], [0.45, 0.69], [0.57, 0.0]]})
 near(world.plant.source_V, 0.57, 1e-9)
@@ -212,7 +226,9 @@ near(world.plant.source_V, floor_A * 0.075, 1e-5)
 def test_leads_drop_voltage_only_without_remote_sense() -> None:
     check("""
 for remote in (True, False):
-    world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, "leads_ohm": 0.05, "remote_sense": remote})
+    source = {"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, "leads_ohm": 0.05}
+    source["remote_sense"] = remote
+    world = World(source)
     true_A = world.sink(2.0)
     world.run_s(0.05)
     source_V = 12.0 - 0.1 * true_A
@@ -223,10 +239,12 @@ for remote in (True, False):
 
 @pytest.mark.parametrize("frequency", [50.0, 100.0, 120.0, 1000.0])
 def test_a_conversion_averages_the_ripple_over_its_window(frequency: float) -> None:
-    """Source: the mean of a sine over a window T is its middle value times sin(pi*f*T)/(pi*f*T); RMS = amplitude/sqrt 2."""
+    """Source: the mean of a sine over a window T is its middle value times sin(pi*f*T)/(pi*f*T); RMS =
+    amplitude/sqrt 2.
+    """
     check(
-        """
-f = %r
+        f"f = {frequency}"
+        + """
 world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1, "ripple_V": 1.0, "ripple_Hz": f})
 readings = []
 for k in range(400):
@@ -238,5 +256,4 @@ window = 1.0 / 860
 expected = 0.5 / math.sqrt(2) * abs(math.sin(math.pi * f * window) / (math.pi * f * window))
 near(rms, expected, 0.03 * expected + 0.002)
 """
-        % frequency
     )
