@@ -7,7 +7,6 @@ intermediate stays below 2**30. A bus error (OSError) leaves `step` and is told 
 
 from micropython import const
 
-import states
 import wire
 from chips.adc_ads1115 import LOWEST_COUNTS, NOT_READY
 

@@ -27,11 +27,11 @@ NAMES = (
 def main(names: list[str]) -> int:
     unknown = sorted(set(names) - set(NAMES))
     if unknown:
-        print(f"no benchmark is called {', '.join(unknown)}; there are {', '.join(NAMES)}", file=sys.stderr)  # noqa: T201
+        print(f"no benchmark is called {', '.join(unknown)}; there are {', '.join(NAMES)}", file=sys.stderr)
         return 2
-    print(f"{platform.platform()}, CPython {platform.python_version()}, {os.cpu_count()} processors")  # noqa: T201
+    print(f"{platform.platform()}, CPython {platform.python_version()}, {os.cpu_count()} processors")
     for name in names or NAMES:
-        print(f"\n{name}", flush=True)  # noqa: T201
+        print(f"\n{name}", flush=True)
         importlib.import_module(f"tests.benchmarks.{name}").main()
     return 0
 

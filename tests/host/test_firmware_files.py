@@ -47,7 +47,7 @@ def test_a_missing_firmware_is_told_with_both_places_and_a_remedy(tmp_path):
 
 def test_byte_code_and_hidden_files_are_never_deployed(tmp_path):
     firmware = make_firmware(tmp_path / "firmware")
-    for left_behind in ("__pycache__/main.cpython-311.pyc", "chips/__pycache__/dac.cpython-311.pyc", ".notes"):
+    for left_behind in ("__pycache__/main.cpython-311.pyc", "chips/__pycache__/dac.pyc", ".notes"):
         path = firmware / left_behind
         path.parent.mkdir(exist_ok=True)
         path.write_bytes(b"")

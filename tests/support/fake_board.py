@@ -7,6 +7,7 @@ The true firmware on the simulated board is tested in tests/system.
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 from sinkwright_wire import messages as m
 from sinkwright_wire.framing import Deframer, Frame, encode_frame
@@ -74,7 +75,7 @@ class FakeBoard:
 
     def event(self, kind: EventKind, code: int = 0, value: int = 0, limit: int = 0) -> bytes:
         self._events += 1
-        return _push(m.Event(self._events, self.time_us, kind, code, value, limit))
+        return _push(m.Event(self._events, self.time_us, kind, int(code), value, limit))
 
     def hear(self, data: bytes) -> bytes:
         """Take bytes, answer with bytes."""
@@ -174,7 +175,7 @@ class FakeBoard:
 
     def _enable(self, message: m.Enable) -> m.Message | None:
         if self.fault:
-            return m.Refused(message.ID, Refusal.FAULT_LATCHED, detail=self.fault)
+            return m.Refused(message.ID, Refusal.FAULT_LATCHED, detail=int(self.fault))
         if not self.mode:
             return m.Refused(message.ID, Refusal.NO_SETPOINT)
         if self.time_us < self.zero_ready_us:
@@ -245,7 +246,7 @@ def _out_of_turn(reply: m.Message) -> bool:
     return isinstance(reply, m.Refused) and reply.refusal in (Refusal.OUT_OF_SEQUENCE, Refusal.NOT_IN_CONTROL)
 
 
-_ACTIONS: dict[type[m.Message], Callable[[FakeBoard, m.Message], m.Message | None]] = {
+_ACTIONS: dict[type[m.Message], Callable[[FakeBoard, Any], m.Message | None]] = {
     m.Identify: FakeBoard._identity,
     m.GetLimits: FakeBoard._limits,
     m.SetLimits: FakeBoard._set_limits,

@@ -7,7 +7,6 @@ import time
 from collections.abc import Callable
 
 from sinkwright.transport.channel import Channel
-
 from tests.support.fake_board import FakeBoard
 
 

@@ -45,7 +45,7 @@ class FakeSource:
             return (0.0 if self.latched else self.open_V), 0.0
         if self.latched:
             return 0.0, 0.0
-        # Once folded back, constant current keeps a source at its lower stable point (reference sheet, section 5).
+        # Once folded back, constant current keeps a source at its lower stable point (reference sheet, 5).
         limit_A = self._limit_at(0.0 if self._folded else self.open_V)
         self._folded = limit_A is not None and demand_A > limit_A
         if not self._folded:

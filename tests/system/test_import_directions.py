@@ -22,7 +22,7 @@ LAYERS = (
     ("board_image", "records", "refusals", "readings"),
     ("simulator", "reports"),
     ("transport", "last_known"),
-    ("link_failures", "link"),
+    ("link_failures", "traffic", "link"),
     ("discovery",),
     ("instrument", "runner"),
     ("blocking",),

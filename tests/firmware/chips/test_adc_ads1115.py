@@ -19,7 +19,7 @@ DRIVER = """
 
 
 def test_a_conversion_is_one_write_of_the_config_register() -> None:
-    """OS 1, MUX 100b + input, PGA 001 (4.096 V), MODE 1, DR 111 (860/s), COMP_QUE 11: fields in the order of the map."""
+    """OS 1, MUX 100b + input, PGA 001 (4.096 V), MODE 1, DR 111 (860/s), COMP_QUE 11: in the order of the map."""
     found = on_board(DRIVER + """
     for number in range(4):
         adc.begin(number)

@@ -9,6 +9,7 @@ import sys
 import textwrap
 import time
 import warnings
+from pathlib import Path
 
 import pytest
 
@@ -131,10 +132,9 @@ def gone_within(process: int, limit_s: float) -> bool:
 
 
 def is_zombie(process: int) -> bool:
-    """Ended, and only not yet waited for by whoever inherited it (no init process runs in some containers)."""
+    """Ended, and only not yet waited for by whoever inherited it (some containers run no init)."""
     try:
-        with open(f"/proc/{process}/stat") as stat:
-            return stat.read().rpartition(")")[2].split()[0] == "Z"
+        return Path(f"/proc/{process}/stat").read_text().rpartition(")")[2].split()[0] == "Z"
     except OSError:
         return True
 

@@ -64,7 +64,8 @@ def test_different_seeds_draw_different_boards():
 
 
 def test_one_tolerance_changed_leaves_the_other_parts_as_they_were():
-    looser = parse_board(BOARD.text.replace("\nratio_tolerance_percent = 0.3\n", "\nratio_tolerance_percent = 0.6\n"))
+    key = "\nratio_tolerance_percent = "
+    looser = parse_board(BOARD.text.replace(f"{key}0.3\n", f"{key}0.6\n"))
     before, after = draw_plant(BOARD, 5), draw_plant(looser, 5)
     assert before.pop("voltage") != after.pop("voltage")
     assert before == after
@@ -78,7 +79,7 @@ def test_the_straight_line_of_the_dac_bends_within_its_nonlinearity_and_keeps_it
 
 
 def test_the_thermistor_follows_the_curve_of_its_datasheet():
-    """NTCLE100E3 (Vishay doc 29049): 10 kohm at 25, 1070.3 ohm at 85 degC, here within the 2 % of R25 and its rounding."""
+    """NTCLE100E3 (Vishay doc 29049): 10 kohm at 25, 1070.3 ohm at 85 degC, R25 within 2 %."""
     for table in values("thermistor", "table"):
         ohm = dict(table)
         assert ohm[25] == pytest.approx(10000, rel=0.0201)

@@ -1,4 +1,4 @@
-"""A simulated board that runs the shipped firmware: repeatable, told when it dies, and under either interpreter."""
+"""A simulated board that runs the shipped firmware: repeatable, and told when it dies."""
 
 from __future__ import annotations
 
@@ -8,6 +8,12 @@ import sys
 from pathlib import Path
 
 import pytest
+
+from sinkwright.definitions import load_board, parse_source
+from sinkwright.errors import LinkLost
+from sinkwright.simulator.interpreter import cpython, find_interpreter
+from sinkwright.simulator.launcher import SimulatedBoard
+from sinkwright.transport.lockstep import LockStepChannel
 from sinkwright_wire.conversation import Conversation, Push, Reply
 from sinkwright_wire.messages import (
     Enable,
@@ -22,12 +28,6 @@ from sinkwright_wire.messages import (
     Telemetry,
 )
 from sinkwright_wire.vocabulary import Mode, Silence
-
-from sinkwright.definitions import load_board, parse_source
-from sinkwright.errors import LinkLost
-from sinkwright.simulator.interpreter import cpython, find_interpreter
-from sinkwright.simulator.launcher import SimulatedBoard
-from sinkwright.transport.lockstep import LockStepChannel
 
 BOARD = load_board()
 SOURCE = parse_source('kind = "supply"\nvoltage_V = 12.0\nresistance_ohm = 0.05\nleads_ohm = 0.02')
@@ -82,6 +82,10 @@ def short_session(seed: int, **options) -> Host:
     return host
 
 
+def telemetry(host: Host) -> list[Telemetry]:
+    return [push for push in host.pushes if isinstance(push, Telemetry)]
+
+
 def test_the_shipped_firmware_says_who_it_is_and_that_it_is_simulated():
     board = start(seed=4)
     host = Host(board)
@@ -96,8 +100,8 @@ def test_the_shipped_firmware_says_who_it_is_and_that_it_is_simulated():
 
 
 def test_it_sinks_the_current_that_was_asked_for_within_its_tolerances():
-    """Ohm's law for the source: 12 V behind 50 mohm, sensed at its terminals; tolerances of the shipped board."""
-    last = [push for push in short_session(seed=1).pushes if isinstance(push, Telemetry)][-1]
+    """Ohm's law for the source: 12 V behind 50 mohm, sensed at its terminals; the shipped tolerances."""
+    last = telemetry(short_session(seed=1))[-1]
     assert last.current_uA == pytest.approx(1_500_000, rel=0.01, abs=25_000)
     volt = 12.0 - 0.05 * 1.5
     assert last.voltage_uV / 1e6 == pytest.approx(volt, rel=0.0045, abs=0.085)
@@ -124,10 +128,7 @@ def test_equal_seeds_give_equal_bytes_while_other_processes_burn_the_machine():
 
 
 def test_different_seeds_read_the_same_source_differently():
-    volts = {
-        [push for push in short_session(seed).pushes if isinstance(push, Telemetry)][-1].voltage_uV
-        for seed in (1, 2, 3)
-    }
+    volts = {telemetry(short_session(seed))[-1].voltage_uV for seed in (1, 2, 3)}
     assert len(volts) == 3
 
 
@@ -141,11 +142,7 @@ def test_cpython_runs_the_same_firmware_to_the_same_readings_and_says_so():
     assert isinstance(identity, Identity)
     assert board.interpreter == "CPython"
     assert identity.interpreter.startswith("CPython")
-    readings = [
-        [(push.number, push.voltage_uV, push.current_uA) for push in session.pushes if isinstance(push, Telemetry)]
-        for session in (short_session(1), short_session(1, interpreter=cpython()))
-    ]
-    assert readings[0] == readings[1]
+    assert telemetry(short_session(1)) == telemetry(short_session(1, interpreter=cpython()))
 
 
 def test_a_killed_board_is_lost_and_told():

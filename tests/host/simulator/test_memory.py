@@ -20,7 +20,7 @@ def test_nothing_but_the_memory_is_left_behind(tmp_path):
 
 def test_another_boards_memory_is_refused_with_the_seed_it_belongs_to(tmp_path):
     remember_boot(tmp_path / "board.json", 3)
-    with pytest.raises(FileError, match="seed 3, whose parts differ from those of seed 4.*Use seed=3"):
+    with pytest.raises(FileError, match=r"seed 3, whose parts differ from those of seed 4.*Use seed=3"):
         remember_boot(tmp_path / "board.json", 4)
 
 

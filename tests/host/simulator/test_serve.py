@@ -10,17 +10,18 @@ import socket
 import subprocess
 import sys
 import time
+from itertools import pairwise
 
 import pytest
 import serial
-from sinkwright_wire.conversation import Conversation, Push, Reply
-from sinkwright_wire.messages import HelloReply, SetTelemetry, Telemetry
 
 from sinkwright.definitions import load_board, parse_source
 from sinkwright.errors import LinkLost
 from sinkwright.simulator.launcher import SimulatedBoard
 from sinkwright.simulator.listeners import open_listener
 from sinkwright.simulator.serve import Server
+from sinkwright_wire.conversation import Conversation, Push, Reply
+from sinkwright_wire.messages import HelloReply, SetTelemetry, Telemetry
 
 STEPS_PER_TENTH = 43
 
@@ -193,7 +194,7 @@ LINE = 99
 
 @pytest.fixture
 def talker(tmp_path):
-    """A stand-in firmware that says its clock (ms) and how many bytes it has read, a thousand times a second."""
+    """A stand-in firmware that says its clock (ms) and how many bytes it has read, 1000 times a second."""
     (tmp_path / "main.py").write_text(TALKER)
     source = parse_source('kind = "supply"\nvoltage_V = 12.0\nresistance_ohm = 0.05')
     board = SimulatedBoard.start(source, load_board(), 1, firmware=tmp_path)
@@ -229,7 +230,7 @@ def test_a_client_that_does_not_read_never_stops_the_board_and_frames_stay_whole
     assert {len(line) + 1 for line in lines} == {LINE}
     numbers = [int(line[1:9]) for line in lines]
     assert numbers == sorted(numbers)
-    gap = max(later - earlier for earlier, later in zip(numbers, numbers[1:], strict=False))
+    gap = max(later - earlier for earlier, later in pairwise(numbers))
     assert gap > 400
 
 

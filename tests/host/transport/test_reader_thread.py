@@ -1,4 +1,4 @@
-"""The reader thread: bytes cross into the event loop, failures reach whoever waits, and closing is orderly."""
+"""The reader thread: bytes cross into the event loop, failures reach whoever waits, closing is orderly."""
 
 from __future__ import annotations
 

@@ -87,7 +87,7 @@ def test_a_port_that_another_program_holds_is_named_as_held(terminal: tuple[int,
 
 
 def test_a_missing_port_is_named_as_missing() -> None:
-    with pytest.raises(LinkLost, match="there is no such port.*sinkwright ports"):
+    with pytest.raises(LinkLost, match=r"there is no such port.*sinkwright ports"):
         open_channel("/dev/no-such-port")
 
 
@@ -96,7 +96,7 @@ def test_a_forbidden_port_names_the_group_that_may_open_it(monkeypatch: pytest.M
         raise serial.SerialException(errno.EACCES, "Permission denied")
 
     monkeypatch.setattr(serial, "serial_for_url", refuse)
-    with pytest.raises(LinkLost, match="may not open this port.*dialout"):
+    with pytest.raises(LinkLost, match=r"may not open this port.*dialout"):
         open_serial("/dev/ttyACM0")
 
 

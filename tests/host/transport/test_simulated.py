@@ -43,11 +43,15 @@ def wall(monkeypatch: pytest.MonkeyPatch) -> Wall:
     return clock
 
 
+STEP_S = 0.05
+
+
 def _run(port: PacedPort, wall: Wall, wall_s: float) -> None:
-    end_s = wall.now_s + wall_s
-    while wall.now_s < end_s:
-        wall.now_s += PACE_S
-        for _ in range(20):
+    for _ in range(round(wall_s / STEP_S)):
+        wall.now_s += STEP_S
+        before_s = -1.0
+        while port.now_s() != before_s:
+            before_s = port.now_s()
             port.read()
 
 

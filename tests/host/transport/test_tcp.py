@@ -46,5 +46,5 @@ def test_the_other_end_leaving_is_a_lost_link(server: socket.socket) -> None:
 def test_nobody_serving_says_how_to_start_a_server() -> None:
     with socket.create_server(("127.0.0.1", 0)) as free:
         port = free.getsockname()[1]
-    with pytest.raises(LinkLost, match="nobody serves a board.*simulate --listen"):
+    with pytest.raises(LinkLost, match=r"nobody serves a board.*simulate --listen"):
         open_channel(f"tcp:127.0.0.1:{port}")

@@ -33,7 +33,9 @@ def test_a_tcp_host_may_be_an_ipv6_address_in_brackets() -> None:
     assert parse_url("tcp:[::1]:7411") == TcpUrl("tcp:[::1]:7411", "::1", 7411)
 
 
-@pytest.mark.parametrize("text", ["tcp:", "tcp:host", "tcp:host:", "tcp:host:0", "tcp:host:99999", "tcp:host:x"])
+@pytest.mark.parametrize(
+    "text", ["tcp:", "tcp:host", "tcp:host:", "tcp:host:0", "tcp:host:99999", "tcp:host:x"]
+)
 def test_a_tcp_url_without_a_port_number_says_how_to_write_it(text: str) -> None:
     with pytest.raises(SinkwrightError, match=r"tcp:127\.0\.0\.1:7411"):
         parse_url(text)
@@ -78,7 +80,8 @@ def test_an_unknown_option_names_the_known_ones_and_the_nearest() -> None:
 
 
 @pytest.mark.parametrize(
-    "option", ["speed=0", "speed=-1", "speed=nan", "speed=inf", "speed=fast", "seed=-1", "seed=1.5", "seed=4294967296"]
+    "option",
+    ["speed=0", "speed=-1", "speed=nan", "speed=inf", "speed=fast", "seed=-1", "seed=1.5", "seed=4294967296"],
 )
 def test_an_unusable_value_is_quoted(option: str) -> None:
     with pytest.raises(SinkwrightError, match=option):
