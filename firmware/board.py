@@ -127,7 +127,9 @@ class Board:
         )
         self.board_id = machine.unique_id()
         self.boot_number = int.from_bytes(os.urandom(4), "little")
-        self.reset_cause = wire.RESET_WATCHDOG if machine.reset_cause() == machine.WDT_RESET else wire.RESET_POWER_ON
+        self.reset_cause = (
+            wire.RESET_WATCHDOG if machine.reset_cause() == machine.WDT_RESET else wire.RESET_POWER_ON
+        )
         self.interpreter = "MicroPython " + ".".join(str(part) for part in sys.implementation[1][:3])
 
 

@@ -62,7 +62,7 @@ class Dispatch:
     def take(self, content):
         """One frame's content, whose check sequence held."""
         version, command, session, sequence, length = struct.unpack_from(wire.HEADER_FORMAT, content)
-        payload = content[wire.HEADER_SIZE:]
+        payload = content[wire.HEADER_SIZE :]
         if length != len(payload):
             return
         if session == self._controller and session:

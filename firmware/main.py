@@ -9,7 +9,6 @@ import sys
 
 from micropython import const
 
-import board as board_file
 import wire
 from chips.adc_ads1115 import ADS1115
 from chips.dac_mcp4725 import MCP4725
@@ -54,9 +53,7 @@ class Firmware:
         )
         self.link = Link(board.stream)
         self.log = RunLog(self.meter, self.time, _LOG_ENTRIES)
-        self.telemetry = Telemetry(
-            self.link, self.machine, self.guard, self.control, self.meter, self.time
-        )
+        self.telemetry = Telemetry(self.link, self.machine, self.guard, self.control, self.meter, self.time)
         self.dispatch = Dispatch(
             board,
             self.link,
@@ -116,7 +113,10 @@ def run(board):
 
 
 def main():
-    board = board_file.open_board()
+    # Only here: whoever runs the loop on another board must not need the microcontroller's modules.
+    from board import open_board
+
+    board = open_board()
     try:
         run(board)
     except KeyboardInterrupt:

@@ -69,7 +69,17 @@ print(octets / (time.monotonic() - start), (usage() - before) / (time.monotonic(
 def simulated_board(folder: Path) -> Iterator[str]:
     source = folder / "source.toml"
     source.write_text(SOURCE, encoding="utf-8")
-    command = [sys.executable, "-m", "sinkwright", "simulate", "--source", str(source), "--listen", "pty", "--json"]
+    command = [
+        sys.executable,
+        "-m",
+        "sinkwright",
+        "simulate",
+        "--source",
+        str(source),
+        "--listen",
+        "pty",
+        "--json",
+    ]
     process = subprocess.Popen(command, stdout=subprocess.PIPE, text=True)
     try:
         assert process.stdout is not None  # it is a pipe

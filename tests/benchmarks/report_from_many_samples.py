@@ -70,7 +70,7 @@ def main(count: int = SAMPLES) -> None:
         f"alternative: only to read these {read} samples one by one takes {read_s:.1f} s",
     )
     for line in told:
-        print(f"  {line}")  # noqa: T201
+        print(f"  {line}")
 
 
 if __name__ == "__main__":

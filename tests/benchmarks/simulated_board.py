@@ -112,8 +112,12 @@ def main() -> None:
     with tempfile.TemporaryDirectory() as folder:
         recorded = asyncio.run(times_real_time(record_writer(Path(folder))))
     unrecorded = asyncio.run(times_real_time(None))
-    print(f"  recorded at 10 frames/s:   best round {recorded[0]:.0f}, mean {recorded[1]:.0f} times real time")
-    print(f"  the same, not recorded:    best round {unrecorded[0]:.0f}, mean {unrecorded[1]:.0f} times real time")
+    print(
+        f"  recorded at 10 frames/s:   best round {recorded[0]:.0f}, mean {recorded[1]:.0f} times real time"
+    )
+    print(
+        f"  the same, not recorded:    best round {unrecorded[0]:.0f}, mean {unrecorded[1]:.0f} times real time"
+    )
     for line in budget().splitlines():
         what, _, us = line.rpartition(" ")
         print(f"  {what:52s} {float(us):6.2f} us")

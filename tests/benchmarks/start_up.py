@@ -23,7 +23,9 @@ def main() -> None:
     pairs = [(wall_s(OURS), wall_s(BARE)) for _ in range(PAIRS)]
     ours, bare = (statistics.median(column) * 1000 for column in zip(*pairs, strict=True))
     ratio = statistics.median(ours / bare for ours, bare in pairs)
-    print(f"  sinkwright --help {ours:.0f} ms, import click {bare:.0f} ms: ratio {ratio:.2f} (median of {PAIRS} pairs)")
+    print(
+        f"  sinkwright --help {ours:.0f} ms, import click {bare:.0f} ms: ratio {ratio:.2f} (median of {PAIRS} pairs)"
+    )
 
 
 if __name__ == "__main__":

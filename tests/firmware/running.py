@@ -11,7 +11,10 @@ from textwrap import dedent
 from typing import Any
 
 from tests.support.micropython import run_micropython
+from tests.support.micropython32 import run_micropython32
 
+_STAND_IN = Path(__file__).parent / "stand_in"
+_MACHINE = Path(__file__).parent / "stand_in_machine"
 _PRELUDE = """
 import gc, json, micropython, struct
 import wire
@@ -21,6 +24,20 @@ from stand_in_board import Board, Session, IMAGE
 
 def on_board(lines: str, *, heapsize: str | None = None) -> Any:
     """Carry out `lines` on the board and return `found`."""
-    script = _PRELUDE + dedent(lines) + "\nprint(json.dumps(found))\n"
-    printed = run_micropython(script, heapsize=heapsize, extra_path=[Path(__file__).parent / "stand_in"])
+    return _found(run_micropython(_script(lines), heapsize=heapsize, extra_path=[_STAND_IN]))
+
+
+def on_32_bit_board(lines: str) -> Any:
+    """The same on an interpreter whose small integers have 31 bits, as the microcontroller's have.
+
+    It has no `machine`, which board.py imports: that module is the stand-in's.
+    """
+    return _found(run_micropython32(_script(lines), extra_path=[_STAND_IN, _MACHINE]))
+
+
+def _script(lines: str) -> str:
+    return _PRELUDE + dedent(lines) + "\nprint(json.dumps(found))\n"
+
+
+def _found(printed: str) -> Any:
     return json.loads(printed.splitlines()[-1])

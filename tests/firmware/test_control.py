@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import pytest
 
+from tests.firmware.heap_check import ARRANGEMENTS, MEM_TOTAL, heap_check
 from tests.firmware.running import on_board
 
 
@@ -108,46 +109,10 @@ def test_a_conversion_that_is_not_ready_is_waited_for_and_not_taken() -> None:
     assert found == [[pytest.approx(1_000_000, abs=1500), 0], 0]
 
 
-HEAP_CHECK = """
-    session = Session()
-    session.sink(1_000_000)
-    {arrange}
-    firmware = session.firmware
-    # mem_total tells what heap_lock does not: a frame too large for the stack is taken from the heap.
-    wait = firmware.time.wait
-    step = firmware.control.step
-    wait(); step()
-    gc.collect()
-    total = micropython.mem_total()
-    total = micropython.mem_total()
-    micropython.heap_lock()
-    for _ in range({steps}):
-        wait()
-        step()
-    micropython.heap_unlock()
-    found = [micropython.mem_total() - total, firmware.guard.fault, firmware.meter.telemetry.pairs]
-"""
-
-ARRANGEMENTS = {
-    "sinking": "session.firmware.guard.quiet_steps = -10000",
-    "off": "session.ask(wire.DISABLE); session.board.show(0, 12_000_000)",
-    "source limits": "session.firmware.guard.quiet_steps = -10000; session.board.show(100_000, 50_000)",
-    "set-point changes": "session.firmware.guard.quiet_steps = -10000; session.firmware.control.ask(0)",
-    "over-current": "session.board.show(5_900_000, 12_000_000)",
-    "hot": "session.board.show(None, 12_000_000, 90_000)",
-    "host silent": "session.firmware.guard.quiet_steps = 1270",
-    "late": "session.board.clock.stall_us = 60_000",
-    "not ready": "session.board.bus.ready = False",
-    "other channel": "session.board.bus.converting = False",
-    "reversed": "session.board.show(0, -1_000_000)",
-    "extremes": "session.board.bus.counts[:] = [32767, -32768, 32767, -32768]",
-}
-
-
 @pytest.mark.parametrize("name", ARRANGEMENTS)
 def test_the_control_step_allocates_nothing(name: str) -> None:
     """Under heap_lock, where an allocation raises, and by an unchanged mem_total."""
-    allocated, _, _ = on_board(HEAP_CHECK.format(arrange=ARRANGEMENTS[name], steps=400))
+    allocated, _, _ = on_board(heap_check(ARRANGEMENTS[name], figure=MEM_TOTAL))
     assert allocated == 0
 
 

@@ -9,9 +9,9 @@ from textwrap import dedent
 from typing import Any
 
 import pytest
+
 from sinkwright_wire.framing import Deframer, Frame, encode_frame
 from sinkwright_wire.messages import pack
-
 from tests.support.golden_frames import GOLDEN_FILE, golden_frames
 from tests.support.micropython import run_micropython
 

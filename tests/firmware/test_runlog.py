@@ -30,11 +30,14 @@ DRIVE = """
 
 
 def test_an_entry_a_second_until_the_log_is_full_and_then_twice_as_far_apart() -> None:
-    found = on_board(DRIVE.format(capacity=64, seconds=300, spike=-1) + """
+    found = on_board(
+        DRIVE.format(capacity=64, seconds=300, spike=-1)
+        + """
     for _ in range(9):
         log.service(False)
     found = [log.entries, log.spacing_ms, list(log.time_ms[:log.entries])]
-""")
+"""
+    )
     entries, spacing_ms, times = found
     assert spacing_ms == 8000
     assert 32 <= entries <= 64
@@ -45,16 +48,21 @@ def test_an_entry_a_second_until_the_log_is_full_and_then_twice_as_far_apart() -
 
 
 def test_merging_keeps_a_spike_of_one_conversion() -> None:
-    highest = on_board(DRIVE.format(capacity=64, seconds=300, spike=30) + """
+    highest = on_board(
+        DRIVE.format(capacity=64, seconds=300, spike=30)
+        + """
     for _ in range(9):
         log.service(False)
     found = max(log.voltage_max_uV[:log.entries])
-""")
+"""
+    )
     assert highest == pytest.approx(12_000_000 - 30_000 + 500_000, abs=1000)
 
 
 def test_the_log_does_not_grow() -> None:
-    grown = on_board(DRIVE.format(capacity=256, seconds=400, spike=-1) + """
+    grown = on_board(
+        DRIVE.format(capacity=256, seconds=400, spike=-1)
+        + """
     gc.collect()
     before = gc.mem_alloc()
     for _ in range(2000):
@@ -65,7 +73,8 @@ def test_the_log_does_not_grow() -> None:
         log.service(True)
     gc.collect()
     found = gc.mem_alloc() - before
-""")
+"""
+    )
     assert grown <= 256
 
 

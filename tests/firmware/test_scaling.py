@@ -26,7 +26,13 @@ def test_a_demand_becomes_the_nearest_code_and_never_leaves_the_converter() -> N
         found = [demand.code(current_uA) for current_uA in (-10**9, -50_000, 0, 1_000_000, 4_000_000, 10**9)]
     """)
     uA_per_code = 82500 / 64
-    expected = [0, round(124 - 50_000 / uA_per_code), 124, *(round(124 + a / uA_per_code) for a in (1e6, 4e6)), 4095]
+    expected = [
+        0,
+        round(124 - 50_000 / uA_per_code),
+        124,
+        *(round(124 + a / uA_per_code) for a in (1e6, 4e6)),
+        4095,
+    ]
     assert found == expected
 
 

@@ -21,10 +21,13 @@ KEEP = """
 
 
 def test_frames_come_at_the_asked_number_of_steps_with_the_means_of_their_window() -> None:
-    frames = on_board(KEEP + """
+    frames = on_board(
+        KEEP
+        + """
     session.turns(420)
     found = frames
-""")
+"""
+    )
     assert len(frames) == 10
     assert [frame[0] for frame in frames] == list(range(frames[0][0], frames[0][0] + 10))
     times = [frame[1] for frame in frames]
@@ -35,14 +38,17 @@ def test_frames_come_at_the_asked_number_of_steps_with_the_means_of_their_window
 
 
 def test_a_frame_that_finds_no_room_is_dropped_counted_and_missed_in_the_numbers() -> None:
-    frames = on_board(KEEP + """
+    frames = on_board(
+        KEEP
+        + """
     session.turns(84)
     open_line = False
     session.turns(84)
     open_line = True
     session.turns(84)
     found = frames
-""")
+"""
+    )
     numbers = [frame[0] for frame in frames]
     assert numbers[2] - numbers[1] == 3
     assert frames[-1][20] - frames[0][20] == 2

@@ -12,9 +12,9 @@ import crcmod.predefined
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from sinkwright_wire.framing import Deframer, Discard, Frame, Reason, Text, encode_frame, fcs_register
 from sinkwright_wire.messages import pack
-
 from tests.support.golden_frames import golden_frames
 from tests.support.messages import any_message
 from tests.support.micropython import run_micropython

@@ -5,11 +5,11 @@ from __future__ import annotations
 import re
 
 import pytest
+
 from sinkwright_wire import generate
 from sinkwright_wire.mapping import struct_format
 from sinkwright_wire.messages import MESSAGES
 from sinkwright_wire.vocabulary import Fault, Refusal
-
 from tests.support.micropython import run_micropython
 
 

@@ -8,10 +8,10 @@ import pytest
 from construct import Bytes, FormatField, Int8ul, Struct
 from hypothesis import given
 from hypothesis import strategies as st
+
 from sinkwright_wire.layouts import HEADER, LOG_ENTRY
 from sinkwright_wire.mapping import Laid, bare, is_tail, laid_out, struct_format
 from sinkwright_wire.messages import MESSAGES
-
 from tests.support.messages import any_message
 
 LAYOUTS = {f"{message.__name__}": message.LAYOUT for message in MESSAGES.values()}

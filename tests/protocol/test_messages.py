@@ -9,6 +9,7 @@ import zlib
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from sinkwright_wire import messages
 from sinkwright_wire.errors import (
     BadField,
@@ -21,7 +22,6 @@ from sinkwright_wire.errors import (
 from sinkwright_wire.layouts import MAX_PAYLOAD
 from sinkwright_wire.messages import MESSAGES, Hello, HelloReply, LogEntries, LogEntry, Request, pack, parse
 from sinkwright_wire.vocabulary import Fault, LimitField, Mode, Refusal, State
-
 from tests.support.golden_frames import golden_frames
 from tests.support.messages import NUMBERS_16, any_message
 

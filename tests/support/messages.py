@@ -7,6 +7,7 @@ from typing import Any, get_type_hints
 
 from construct import Construct, FormatField, GreedyBytes
 from hypothesis import strategies as st
+
 from sinkwright_wire.layouts import MAX_ENTRIES, MAX_TEXT
 from sinkwright_wire.mapping import Laid, bare, number_range
 from sinkwright_wire.messages import MESSAGES, LogEntry, Message

@@ -35,7 +35,9 @@ def test_the_job_stands_in_the_first_paragraph() -> None:
     assert "DC power sources" in text.split("\n\n")[1]
 
 
-@pytest.mark.parametrize("page", sorted([*ROOT.glob("*.md"), *ROOT.glob("host/docs/*.md")]), ids=lambda page: page.name)
+@pytest.mark.parametrize(
+    "page", sorted([*ROOT.glob("*.md"), *ROOT.glob("host/docs/*.md")]), ids=lambda page: page.name
+)
 def test_links_between_the_pages_lead_somewhere(page: Path) -> None:
     for target in re.findall(r"\]\(([^)#]+)[^)]*\)", page.read_text(encoding="utf-8")):
         if not target.startswith(("http:", "https:")):

@@ -49,7 +49,12 @@ def test_the_demo_runs_from_an_empty_environment_outside_the_checkout(wheel: Pat
     clean = {key: value for key, value in os.environ.items() if key not in ("PYTHONPATH", "VIRTUAL_ENV")}
     clean["HOME"] = str(tmp_path)
     demo = subprocess.run(
-        [str(scripts / "sinkwright"), "demo"], capture_output=True, text=True, check=False, cwd=tmp_path, env=clean
+        [str(scripts / "sinkwright"), "demo"],
+        capture_output=True,
+        text=True,
+        check=False,
+        cwd=tmp_path,
+        env=clean,
     )
     assert demo.returncode == 0, demo.stdout + demo.stderr
     assert "SIMULATED" in demo.stdout

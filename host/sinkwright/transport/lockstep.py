@@ -7,11 +7,13 @@ must not know frames.
 
 from __future__ import annotations
 
+import math
 from typing import Protocol
 
 from sinkwright.transport.channel import Channel
 
-#: The longest grant: one telemetry interval, so that whoever waits sees the board's clock and a stop in time.
+#: The longest grant: a run's telemetry interval of 0.1 s with the control step in which it ends, so that a frame costs
+#: one exchange, and whoever waits sees the board's clock and a stop in time.
 GRANT_S = 0.11
 
 
@@ -43,7 +45,8 @@ class LockStepChannel(Channel):
     async def receive(self, timeout_s: float) -> bytes:
         exchange = self._board.exchange
         time_us = self._time_us
-        end_us = time_us + int(timeout_s * 1e6)
+        # Rounded up: a wait shorter than a microsecond must let time pass, or it would never be over.
+        end_us = time_us + math.ceil(timeout_s * 1e6)
         outgoing, self._outgoing = self._outgoing, b""
         while True:
             data, time_us = exchange(outgoing, max(0, min(self._grant_us, end_us - time_us)))

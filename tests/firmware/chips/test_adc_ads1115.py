@@ -20,29 +20,37 @@ DRIVER = """
 
 def test_a_conversion_is_one_write_of_the_config_register() -> None:
     """OS 1, MUX 100b + input, PGA 001 (4.096 V), MODE 1, DR 111 (860/s), COMP_QUE 11: in the order of the map."""
-    found = on_board(DRIVER + """
+    found = on_board(
+        DRIVER
+        + """
     for number in range(4):
         adc.begin(number)
     found = written
-""")
+"""
+    )
     config = [0b1_100_001_1_111_00011 + (number << 12) for number in range(4)]
     assert found == [[0x48, 1, word] for word in config]
 
 
 def test_counts_are_two_s_complement() -> None:
-    found = on_board(DRIVER + """
+    found = on_board(
+        DRIVER
+        + """
     adc.begin(0)
     found = []
     for counts in (0, 1, 32767, -1, -32768):
         bus.counts[0] = counts
         found.append(adc.finish())
-""")
+"""
+    )
     assert found == [0, 1, 32767, -1, -32768]
 
 
 def test_a_part_still_converting_and_a_part_that_was_reset_are_told_apart() -> None:
     """The power-up value of the config register is 8583h."""
-    found = on_board(DRIVER + """
+    found = on_board(
+        DRIVER
+        + """
     adc.begin(2)
     bus.ready = False
     busy = adc.finish() == adc_ads1115.NOT_READY
@@ -50,5 +58,6 @@ def test_a_part_still_converting_and_a_part_that_was_reset_are_told_apart() -> N
     bus._config_high, bus._config_low = 0x85, 0x83
     reset = adc.finish() == adc_ads1115.NOT_CONVERTING
     found = [busy, reset, adc.config_seen]
-""")
+"""
+    )
     assert found == [True, True, 0x8583]

@@ -136,10 +136,12 @@ IMAGE = {
         "open_counts": 26000,
         "short_counts": 500,
     },
-    "thermal": {"stages": [
+    "thermal": {
+        "stages": [
             {"r_mK_per_W": 300, "every_steps": 2, "share_x32768": 32470},
             {"r_mK_per_W": 500, "every_steps": 2, "share_x32768": 1210},
-        ]},
+        ]
+    },
     "limits": {
         "current_uA": 4_000_000,
         "voltage_uV": 30_000_000,
@@ -217,7 +219,9 @@ class Session:
             self.sequence += 1
             sequence = self.sequence
         version = wire.VERSION if version is None else version
-        self._queue.append(struct.pack(wire.HEADER_FORMAT, version, message, session, sequence, len(payload)) + payload)
+        self._queue.append(
+            struct.pack(wire.HEADER_FORMAT, version, message, session, sequence, len(payload)) + payload
+        )
         del self.sent[:]
         self.firmware.turn()
         for reply, to, number, content in self.sent:

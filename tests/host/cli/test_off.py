@@ -32,7 +32,7 @@ def test_off_says_what_the_load_is_doing_afterwards(served_board):
     done = call("off", "--port", served_board)
     assert done.returncode == 0
     assert "SIMULATED" in done.stdout
-    assert "The load is off; its terminals are at 12.1" in done.stdout
+    assert "The load is off; its terminals are at 12." in done.stdout
 
 
 def test_off_from_a_second_terminal_ends_a_run_that_sinks(served_board, tmp_path):
