@@ -8,6 +8,7 @@ shows which one it was. Knows no board.
 
 from __future__ import annotations
 
+import platform
 import sys
 from dataclasses import dataclass
 from importlib.util import find_spec
@@ -44,15 +45,26 @@ class Interpreter:
         return [*self.command, str(script), *arguments]
 
 
-def find_interpreter(heap_bytes: int = HEAP_BYTES) -> Interpreter:
-    """MicroPython where its package is installed, else CPython."""
+def find_interpreter(heap_bytes: int = HEAP_BYTES, *, native: bool | None = None) -> Interpreter:
+    """MicroPython where its package is installed, else CPython. `native` None: machine code where it can be."""
     spec = find_spec(_EXTENSION)
     if spec is None or spec.origin is None:
         return cpython()
+    options = ["-X", f"heapsize={heap_bytes}"]
+    if emits_native() if native is None else native:
+        options += ["-X", "emit=native"]
     return Interpreter(
         "MicroPython",
-        (sys.executable, "-I", "-S", "-c", _LOAD_AND_RUN, spec.origin, "-X", f"heapsize={heap_bytes}"),
+        (sys.executable, "-I", "-S", "-c", _LOAD_AND_RUN, spec.origin, *options),
     )
+
+
+def emits_native() -> bool:
+    """Whether MicroPython can compile to this machine's own code here, as its `native` emitter does on a board.
+
+    The same files with the same meaning, a third to a half faster; a test holds the bytes of both to be equal.
+    """
+    return platform.machine().lower() in ("x86_64", "amd64")
 
 
 def cpython() -> Interpreter:

@@ -8,8 +8,6 @@ looks at a wall clock, so the same seed gives the same bytes.
 import gc
 import sys
 
-import micropython
-
 import chip_ads1115
 import chip_mcp4725
 from noise import Noise
@@ -41,7 +39,6 @@ class Clock:
     def add(self, ticks, us):
         return ticks + us
 
-    @micropython.native
     def wait_until(self, ticks):
         """Idle until `ticks`; what was written leaves first, at the time it was written."""
         host = self._host
@@ -71,7 +68,6 @@ class Bus:
         self._write_us = [(2 + 9 * (1 + n)) * 1_000_000 // frequency_Hz for n in bits]
         self._read_us = [(3 + 9 * (3 + n)) * 1_000_000 // frequency_Hz for n in bits]
 
-    @micropython.native
     def readfrom_mem_into(self, address, register, buffer):
         plant = self._plant
         plant.now = now = plant.now + self._read_us[len(buffer)]
@@ -82,7 +78,6 @@ class Bus:
             raise OSError(_EIO)
         chip.read_register(register, buffer)
 
-    @micropython.native
     def writeto_mem(self, address, register, buffer):
         plant = self._plant
         plant.now = now = plant.now + self._write_us[len(buffer) + 1]

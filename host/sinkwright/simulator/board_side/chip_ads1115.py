@@ -9,8 +9,6 @@ The plant tells the mean at each pin. While nothing moves it is known in advance
 the conversion begins and shown when it ends; integers only, because this is the simulator's hottest path.
 """
 
-import micropython
-
 _CONVERSION = 0
 _CONFIG = 1
 _OS = 0x8000
@@ -51,7 +49,6 @@ class Chip:
 
     # -- the bus --------------------------------------------------------------------------------------------
 
-    @micropython.native
     def read_register(self, register, buffer):
         self._pointer = register
         now = self._plant.now
@@ -71,7 +68,6 @@ class Chip:
         buffer[0] = value >> 8 & 0xFF
         buffer[1] = value & 0xFF
 
-    @micropython.native
     def write_register(self, register, data):
         self._pointer = register
         value = data[0] << 8 | data[1]
@@ -105,7 +101,6 @@ class Chip:
         window = self._windows_us[self._config >> 5 & 7]
         self._start(now - (now - self.busy_until) % window)
 
-    @micropython.native
     def _start(self, now):
         plant = self._plant
         if plant.moving:
@@ -118,7 +113,6 @@ class Chip:
             plant.window_from = now
             self.pending = self.convert()
 
-    @micropython.native
     def convert(self):
         """Counts for the plant's pin levels; the plant calls it too, after a window with a change in it."""
         config = self._config

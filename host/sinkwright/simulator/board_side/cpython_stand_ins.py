@@ -1,7 +1,7 @@
 """The MicroPython names that the firmware and this folder use, for where CPython runs them.
 
-Only names are supplied, no behaviour: `const` and `native` hand back what they get, and collecting is
-CPython's own affair. What MicroPython checks by itself (small integers, no allocation) is not checked here.
+Only names are supplied, no behaviour: `const` hands back what it gets, and collecting is CPython's own
+affair. What MicroPython checks by itself (small integers, no allocation) is not checked here.
 """
 
 import gc
@@ -11,8 +11,7 @@ import types
 
 def install():
     micropython = types.ModuleType("micropython")
-    micropython.const = micropython.native = micropython.viper = _same
-    micropython.heap_lock = micropython.heap_unlock = micropython.mem_total = _nothing
+    micropython.const = _same
     sys.modules["micropython"] = micropython
     collector = types.ModuleType("gc")
     collector.collect = gc.collect

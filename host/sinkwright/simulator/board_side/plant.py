@@ -12,8 +12,6 @@ follow, and the transistor's on-resistance as the floor of the voltage.
 
 import math
 
-import micropython
-
 from front_end import FrontEnd
 from heat import HeatChain, SenseResistor, Thermistor
 from sources import open_source
@@ -198,7 +196,6 @@ class Plant:
 
     # -- one step -------------------------------------------------------------------------------------------
 
-    @micropython.native
     def _advance(self, us):
         """All states by `us` microseconds, everything outside being constant."""
         h = us * 1e-6

@@ -11,8 +11,6 @@ itself; `ripple_V` is the ripple's amplitude just now.
 
 import math
 
-import micropython
-
 _NEVER = 1e9
 _VOLT_AT_REST = 2e-6
 _LATCH_RELEASE_s = 1.0
@@ -68,7 +66,6 @@ class Supply:
             self._limit_0_A = source["foldback_A"]
             self._limit_per_V = (limit - self._limit_0_A) / self._open_V
 
-    @micropython.native
     def step(self, h, wanted, c, d):
         if self.latched:
             a = 0.0
@@ -192,7 +189,6 @@ class Cell:
         high = table[j + 1]
         return max(low[1] + (x - low[0]) * (high[1] - low[1]) / (high[0] - low[0]), 0.0)
 
-    @micropython.native
     def step(self, h, wanted, c, d):
         inner_V = self.open_circuit_V() - self._pairs_V
         load = wanted
