@@ -1,32 +1,43 @@
 """Sinkwright's firmware: boots safe, then one cooperative loop until power is lost.
 
 Each turn of the loop is one control step at a fixed period, followed by bounded slices of everything that may
-wait: the link, the run log, telemetry. Leaving the loop any way at all clamps the gate.
+wait: the link, the run log, telemetry, lamp, fan, watchdog. Leaving the loop any way at all clamps the gate;
+startup.py says what comes before the first turn and after the last.
 """
 
 import gc
-import sys
 
 from micropython import const
 
+import chips
+import runlog
+import selftest
+import startup
 import wire
-from chips.adc_ads1115 import ADS1115
-from chips.dac_mcp4725 import MCP4725
+from burst import Burst
+from commands import Commands
 from control import Control
 from dispatch import Dispatch
+from ends import Ends
+from fan import Fan
 from guard import Guard
+from lamp import Lamp
 from link import Link
 from meter import LARGEST_CURRENT_uA, LARGEST_VOLTAGE_uV, Meter
-from runlog import RunLog
+from program import Program
+from runs import Runs
 from scaling import Demand, Scale, Thermistor
 from states import Machine
+from store import Store
 from telemetry import Telemetry
 from thermal import Junction
 from timekeeper import Timekeeper
 
-_LOG_ENTRIES = const(4000)
 #: The run log is served every so many turns: a second holds 25 of them.
 _SLICES = const(16)
+_HOUSEKEEPING_SLICE = const(8)
+#: Turns for which the OFF button must have been let go before the next press counts: 19 ms.
+_BOUNCE_TURNS = const(8)
 _ALLOCATED_BEFORE_COLLECTING = const(16 * 1024)
 
 
@@ -35,41 +46,57 @@ class Firmware:
 
     def __init__(self, board):
         image = board.image
-        self.machine = Machine(board.gate, board.led)
+        self.lamp = Lamp(board.led)
+        self.machine = Machine(board.gate, self.lamp)
+        self.store = Store(board.store, self.machine)
+        self.dac = chips.driver("dac", image["dac"], board)
+        self.adc = chips.driver("adc", image["adc"], board)
+        self.monitor = chips.driver("monitor", image["monitor"], board) if "monitor" in image else None
         self.time = Timekeeper(board.clock, image["period_us"])
         self.meter = Meter(image["period_us"])
-        self.guard = Guard(image, self.machine, self.meter, self.time)
+        scales = _scales(image, self.store.get("calibration"))
+        self.guard = Guard(image, scales, self.machine, self.meter, self.time)
+        self.ends = Ends(self.machine, self.meter, self.time, image["period_us"])
+        self.burst = Burst(scales, self.guard, self.machine, self.time)
         self.control = Control(
             image,
-            MCP4725(board.bus, image["dac"]),
-            ADS1115(board.bus, image["adc"]),
-            _scales(image),
+            self.dac,
+            self.adc,
+            scales,
             Demand(image["dac"]),
             self.machine,
             self.guard,
             self.meter,
             self.time,
             Junction(image["thermal"]["stages"]),
+            self.burst,
+            self.ends,
         )
+        self.program = Program(image["period_us"], self.control, self.machine, self.ends, board.trigger)
         self.link = Link(board.stream)
-        self.log = RunLog(self.meter, self.time, _LOG_ENTRIES)
+        self.log = runlog.RunLog(self.meter, self.time, runlog.LARGEST)
         self.telemetry = Telemetry(self.link, self.machine, self.guard, self.control, self.meter, self.time)
-        self.dispatch = Dispatch(
-            board,
-            self.link,
-            self.machine,
-            self.guard,
-            self.control,
-            self.meter,
-            self.time,
-            self.telemetry,
-            self.log,
-        )
+        self.runs = Runs(self.machine, self.guard, self.ends, self.time, self.telemetry)
+        self.fan = Fan(board.fan)
+        self.commands = Commands(board, self)
+        self.dispatch = Dispatch(board, self.link, self.guard, self.commands)
+        #: What the self-test found (wire.SELF_TEST_...); startup.py says it.
+        self.self_test = wire.SELF_TEST_PASSED
+        #: Why the load stays off since this start, in words; "" where it does not.
+        self.why_off = ""
+        #: Whether a host has asked for a restart, and for which: None, 0 or 1 (for maintenance).
+        self.restart_to = None
+        self._button = board.button
+        self._button_turns = 0
+        self._feed_watchdog = board.watchdog.feed
+        self._overruns_fed = 0
         self._slice = 0
         self.telemetry.tell(wire.EVENT_BOOT, board.reset_cause)
 
     def turn(self):
         self.time.wait()
+        if self.program.running:
+            self.program.step()
         try:
             self.control.step()
         except OSError as error:
@@ -78,6 +105,13 @@ class Firmware:
 
     def service(self):
         """What may wait, in bounded slices."""
+        if self._button():
+            self._hold_off()
+        elif self._button_turns:
+            self._button_turns -= 1
+        if self.monitor is not None and self.monitor.tripped():
+            self.guard.latch(wire.FAULT_OVER_CURRENT, self.meter.current_uA, self.monitor.limit_uA)
+        self.runs.service()
         content = self.link.poll()
         if content is not None:
             self.dispatch.take(content)
@@ -85,10 +119,35 @@ class Firmware:
         self._slice = (self._slice + 1) % _SLICES
         if not self._slice:
             self.log.service(self.machine.state == wire.STATE_SINKING)
+        elif self._slice == _HOUSEKEEPING_SLICE:
+            self._keep_house()
+
+    def _hold_off(self):
+        """The OFF button is pressed: off, and told once, although its contacts bounce."""
+        if not self._button_turns or self.machine.state == wire.STATE_SINKING:
+            self.commands.disable()
+            self.telemetry.tell(wire.EVENT_BUTTON)
+        self._button_turns = _BOUNCE_TURNS
+
+    def _keep_house(self):
+        """Lamp and fan; the watchdog is fed only if no deadline was missed since the last time."""
+        self.lamp.turn()
+        self.fan.service(self.meter.heatsink_mC, self.guard.fault)
+        overruns = self.time.overruns
+        if overruns == self._overruns_fed:
+            self._feed_watchdog()
+        self._overruns_fed = overruns
+        if self.restart_to is not None:
+            raise startup.Restart(self.restart_to)
 
 
-def _scales(image):
-    scales = {name: Scale(image["scales"][name]) for name in ("voltage", "current", "force")}
+def _scales(image, calibration):
+    scales = {}
+    for name in ("voltage", "current", "force"):
+        scales[name] = Scale(image["scales"][name])
+    if calibration and not selftest.check_calibration(calibration, image):
+        for name in scales:
+            scales[name].calibrate(calibration[name])
     for name, largest in (
         ("voltage", LARGEST_VOLTAGE_uV),
         ("force", LARGEST_VOLTAGE_uV),
@@ -101,13 +160,18 @@ def _scales(image):
 
 
 def run(board):
-    """Run for ever. However this is left, the gate is clamped."""
+    """Run until the loop is left, clamp, and restart: see startup.py. In a maintenance boot no watchdog runs."""
     try:
-        firmware = Firmware(board)
+        firmware = startup.start(board, Firmware)
         gc.collect()
         gc.threshold(_ALLOCATED_BEFORE_COLLECTING)
+        if not board.maintenance:
+            board.watchdog.start()
         while True:
             firmware.turn()
+    except (Exception, KeyboardInterrupt) as error:
+        board.gate.clamp()
+        startup.leave(board, error)
     finally:
         board.gate.clamp()
 
@@ -116,15 +180,7 @@ def main():
     # Only here: whoever runs the loop on another board must not need the microcontroller's modules.
     from board import open_board
 
-    board = open_board()
-    try:
-        run(board)
-    except KeyboardInterrupt:
-        print("stopped by Ctrl-C: the gate is clamped")
-    except Exception as error:
-        sys.print_exception(error)
-        print("the firmware stopped: the gate is clamped")
-        raise error
+    run(open_board())
 
 
 if __name__ == "__main__":

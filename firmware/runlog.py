@@ -15,18 +15,30 @@ _LOWEST_cC = const(-32768)
 _HIGHEST_cC = const(32767)
 
 
+#: How many entries the board's log has.
+LARGEST = const(4000)
+
+
+def _columns(capacity):
+    # From octets: a list of as many zeros would need another contiguous piece of the heap for each of them.
+    blank = bytes(4 * capacity)
+    quads = [array("i", blank) for _ in range(4)]
+    return quads + [array("I", blank), array("I", blank), array("h", bytes(2 * capacity))]
+
+
+# More than half of a small microcontroller's heap: made while that is still in one piece, because main.py imports
+# this file before nearly all others.
+_LARGEST_COLUMNS = _columns(LARGEST)
+
+
 class RunLog:
     def __init__(self, meter, timekeeper, capacity):
         self._meter = meter
         self._time = timekeeper
         self.capacity = capacity
-        self.time_ms = array("I", [0] * capacity)
-        self.voltage_uV = array("i", [0] * capacity)
-        self.voltage_min_uV = array("i", [0] * capacity)
-        self.voltage_max_uV = array("i", [0] * capacity)
-        self.current_uA = array("i", [0] * capacity)
-        self.heatsink_cC = array("h", [0] * capacity)
-        self.charge_mC = array("I", [0] * capacity)
+        columns = _LARGEST_COLUMNS if capacity == LARGEST else _columns(capacity)
+        self.voltage_uV, self.voltage_min_uV, self.voltage_max_uV, self.current_uA = columns[:4]
+        self.time_ms, self.charge_mC, self.heatsink_cC = columns[4:]
         self.running = False
         self._reset()
 

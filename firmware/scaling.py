@@ -12,23 +12,101 @@ from micropython import const
 _PART_BITS = const(14)
 _HALF = const(1 << (_PART_BITS - 1))
 _CODE_BITS = const(6)
+_COEFFICIENTS = ("zero_counts", "whole", "part", "offset")
 
 
 class Scale:
-    """One straight line: `reading = n * (whole + part / 2**14)`, `n = counts - zero_counts`."""
+    """Two straight lines from counts: `nominal`, by the parts' values alone, and `reading`, as calibrated.
+
+    Each is `n * (whole + part / 2**14) + offset`, `n = counts - zero_counts`. Without a calibration they are one line,
+    and `calibrated` is false.
+    """
 
     def __init__(self, entry):
+        self._zero_counts = self._nominal_zero_counts = entry["zero_counts"]
+        self._whole = self._nominal_whole = entry["whole"]
+        self._part = self._nominal_part = entry["part"]
+        self._rounding = _HALF
+        self.calibrated = False
+
+    def calibrate(self, entry):
+        """Read by `entry` from now on, which `implausible` has found nothing against."""
         self._zero_counts = entry["zero_counts"]
         self._whole = entry["whole"]
         self._part = entry["part"]
-
-    def largest(self):
-        """The largest magnitude that any 16-bit code can give; may be a big integer, so not for the step."""
-        return max(abs(self.reading(-32768)), abs(self.reading(32767)))
+        self._rounding = _HALF + (entry["offset"] << _PART_BITS)
+        self.calibrated = True
 
     def reading(self, counts):
         counts -= self._zero_counts
-        return counts * self._whole + ((counts * self._part + _HALF) >> _PART_BITS)
+        return counts * self._whole + ((counts * self._part + self._rounding) >> _PART_BITS)
+
+    def nominal(self, counts):
+        counts -= self._nominal_zero_counts
+        return counts * self._nominal_whole + ((counts * self._nominal_part + _HALF) >> _PART_BITS)
+
+    def higher(self, counts):
+        """The higher of both lines."""
+        return max(self.reading(counts), self.nominal(counts))
+
+    def lower(self, counts):
+        return min(self.reading(counts), self.nominal(counts))
+
+    # -- between control steps; may make big integers -----------------------------------------------------------------
+
+    def largest(self):
+        """The largest magnitude that any 16-bit code can give."""
+        return max(abs(line(counts)) for line in (self.lower, self.higher) for counts in (-32768, 32767))
+
+    def highest_counts(self, limit):
+        """The highest code that neither line reads as more than `limit`: above it, a trip."""
+        return _last(lambda counts: self.higher(counts) <= limit)
+
+    def lowest_counts(self, limit):
+        """The lowest code that neither line reads as less than `limit`."""
+        return _last(lambda counts: self.lower(counts) < limit) + 1
+
+
+def _last(holds):
+    """The last code for which `holds`, which is true up to some code and false from there on."""
+    low = -32769
+    high = 32768
+    while high - low > 1:
+        middle = (low + high) >> 1
+        if holds(middle):
+            low = middle
+        else:
+            high = middle
+    return low
+
+
+def implausible(calibration, image):
+    """A sentence about the first coefficient that parts within their tolerances cannot need; "" if there is none.
+
+    `calibration` has "number" and, by the scales' names, zero_counts, whole, part and offset; the image's
+    "calibration" says how far from the nominal line each may lie.
+    """
+    for name in sorted(image["calibration"]):
+        bounds = image["calibration"][name]
+        entry = calibration.get(name)
+        if not isinstance(entry, dict) or not all(isinstance(entry.get(key), int) for key in _COEFFICIENTS):
+            return "the calibration of " + name + " lacks a coefficient"
+        if not 0 <= entry["part"] < 1 << _PART_BITS:
+            return "the calibrated gain of " + name + " is not written as it must be"
+        one = _per_count(image["scales"][name])
+        gain = _per_count(entry)
+        if abs(gain - one) * 1_000_000 > one * bounds["gain_ppm"]:
+            return "the calibrated gain of " + name + " is beyond what the parts allow"
+        shift = (image["scales"][name]["zero_counts"] - entry["zero_counts"]) * gain
+        if abs(shift + (entry["offset"] << _PART_BITS)) > bounds["zero_counts"] * gain:
+            return "the calibrated zero of " + name + " is beyond what the parts allow"
+        if abs(entry["offset"] << _PART_BITS) > gain:
+            return "the calibrated offset of " + name + " is more than a count"
+    return ""
+
+
+def _per_count(entry):
+    return (entry["whole"] << _PART_BITS) + entry["part"]
 
 
 class Demand:

@@ -13,6 +13,13 @@ import wire
 
 _EVENTS_KEPT = const(8)
 _NONE = const(0)
+#: What a person should know of when it begins and when it is over.
+_SHORT = (
+    wire.LIMITING_SOURCE,
+    wire.LIMITING_NO_SOURCE,
+    wire.LIMITING_UNREACHABLE,
+    wire.LIMITING_UNSETTLED,
+)
 
 
 class Telemetry:
@@ -63,9 +70,12 @@ class Telemetry:
 
     def _tell_limiting(self):
         limiting = self._control.limiting
-        was_short = self._limiting_told in (wire.LIMITING_SOURCE, wire.LIMITING_NO_SOURCE)
+        if limiting == wire.LIMITING_RAMPING:
+            # On its way, but not there: what was told before stands until it is.
+            return
+        was_short = self._limiting_told in _SHORT
         self._limiting_told = limiting
-        if limiting in (wire.LIMITING_SOURCE, wire.LIMITING_NO_SOURCE):
+        if limiting in _SHORT:
             self.tell(wire.EVENT_SOURCE_LIMITS, limiting, self._meter.current_uA, self._control.demand_uA)
         elif was_short:
             self.tell(wire.EVENT_SOURCE_RETURNED, limiting, self._meter.current_uA, self._control.demand_uA)
@@ -88,10 +98,10 @@ class Telemetry:
             self._number & 0xFFFFFFFF,
             self._time.now_us(),
             self._machine.state,
-            wire.MODE_CURRENT,
+            self._control.mode or wire.MODE_CURRENT,
             self._control.limiting,
             self._guard.fault,
-            self._control.setpoint_uA,
+            self._control.setpoint,
             window.voltage_uV(),
             window.voltage_min_uV,
             window.voltage_max_uV,

@@ -20,6 +20,10 @@ class Timekeeper:
         self.seconds = 0
         self.micros = 0
 
+    def begin(self):
+        """The first period begins now: what came before was no control step."""
+        self._deadline = self._clock.ticks_us()
+
     def wait(self):
         """Idle until the next step is due."""
         self._deadline = self._clock.add(self._deadline, self._period_us)

@@ -10,6 +10,8 @@ VERSION = const(1)
 MAX_PAYLOAD = const(112)
 MAX_TEXT = const(100)
 MAX_ENTRIES = const(4)
+MAX_STEPS = const(10)
+MAX_READINGS = const(16)
 NEVER_HEARD = const(0xFFFFFFFF)
 
 # version, id, session, sequence, length
@@ -36,8 +38,8 @@ SET_POINT = const(0x05)
 SET_POINT_FORMAT = "<Bi"
 
 ENABLE = const(0x06)
-# when_silent
-ENABLE_FORMAT = "<B"
+# when_silent, run, program
+ENABLE_FORMAT = "<BIB"
 
 DISABLE = const(0x07)
 DISABLE_FORMAT = "<"
@@ -61,6 +63,33 @@ GET_LOG_FORMAT = "<H"
 
 BEAT = const(0x0E)
 BEAT_FORMAT = "<"
+
+SET_ENDS = const(0x0F)
+# voltage_uV, charge_mC, energy_mJ, duration_ms, temperature_mC
+SET_ENDS_FORMAT = "<iIIIi"
+
+GET_RUN = const(0x10)
+GET_RUN_FORMAT = "<"
+
+MARK_FETCHED = const(0x11)
+# run
+MARK_FETCHED_FORMAT = "<I"
+
+LOAD_PROGRAM = const(0x12)
+# first, total, repeats, steps
+LOAD_PROGRAM_FORMAT = "<BBH"
+
+ARM_BURST = const(0x13)
+# before, trigger
+ARM_BURST_FORMAT = "<HB"
+
+GET_BURST = const(0x14)
+# first
+GET_BURST_FORMAT = "<H"
+
+RESTART = const(0x15)
+# maintenance
+RESTART_FORMAT = "<B"
 
 TELEMETRY = const(0x40)
 # number, time_us, state, mode, limiting, fault, setpoint, voltage_uV, voltage_min_uV,
@@ -102,6 +131,15 @@ LOG_ENTRIES = const(0x8D)
 # first, total, spacing_ms, entries
 LOG_ENTRIES_FORMAT = "<HHI"
 
+RUN = const(0x90)
+# run, state, ended_by, fetched, when_silent, started_us, ended_us, charge_uC, energy_uJ,
+# log_entries, spacing_ms
+RUN_FORMAT = "<IBBBBQQqqHI"
+
+BURST_READINGS = const(0x94)
+# first, total, before, started_us, step_us, readings
+BURST_READINGS_FORMAT = "<HHHQI"
+
 DONE = const(0xC0)
 # request
 DONE_FORMAT = "<B"
@@ -112,6 +150,12 @@ REFUSED_FORMAT = "<BBBi"
 
 # time_ms, voltage_uV, voltage_min_uV, voltage_max_uV, current_uA, heatsink_cC, charge_mC
 LOG_ENTRY_FORMAT = "<IiiiihI"
+
+# duration_ms, value, shape, trigger
+PROGRAM_STEP_FORMAT = "<IiBB"
+
+# kind, value
+BURST_READING_FORMAT = "<Bi"
 
 STATE_OFF = const(0)
 STATE_SINKING = const(1)
@@ -130,6 +174,9 @@ LIMITING_RAMPING = const(2)
 LIMITING_DERATED = const(3)
 LIMITING_NO_SOURCE = const(4)
 LIMITING_SATURATED = const(5)
+LIMITING_UNREACHABLE = const(6)
+LIMITING_UNRESOLVED = const(7)
+LIMITING_UNSETTLED = const(8)
 
 FAULT_NONE = const(0)
 FAULT_HEATSINK_HOT = const(1)
@@ -149,6 +196,12 @@ FAULT_REVERSED_SOURCE = const(14)
 FAULT_LOOP_LATE = const(15)
 FAULT_EXCEPTION = const(16)
 FAULT_SELF_TEST = const(17)
+FAULT_SENSE_LEAD = const(18)
+FAULT_THERMISTOR_LOOSE = const(19)
+FAULT_COOLING_WEAK = const(20)
+FAULT_SUPPLY_LOW = const(21)
+FAULT_CONVERTER_STUCK = const(22)
+FAULT_CURRENT_MISSING = const(23)
 
 REFUSAL_UNKNOWN_COMMAND = const(1)
 REFUSAL_BAD_LENGTH = const(2)
@@ -166,6 +219,11 @@ REFUSAL_ZERO_NOT_READY = const(13)
 REFUSAL_ZERO_OUT_OF_BUDGET = const(14)
 REFUSAL_NO_SESSION = const(15)
 REFUSAL_WRONG_VERSION = const(16)
+REFUSAL_ENDS_MISSING = const(17)
+REFUSAL_RUN_NOT_FETCHED = const(18)
+REFUSAL_PROGRAM_BAD = const(19)
+REFUSAL_BOARD_IMAGE = const(20)
+REFUSAL_TOO_LONG = const(21)
 
 LIMIT_FIELD_NONE = const(0)
 LIMIT_FIELD_CURRENT = const(1)
@@ -182,6 +240,36 @@ LIMIT_SET_BOARD = const(1)
 SILENCE_STOP = const(0)
 SILENCE_CONTINUE = const(1)
 
+RUN_END_NONE = const(0)
+RUN_END_VOLTAGE = const(1)
+RUN_END_CHARGE = const(2)
+RUN_END_ENERGY = const(3)
+RUN_END_DURATION = const(4)
+RUN_END_TEMPERATURE = const(5)
+RUN_END_DISABLED = const(6)
+RUN_END_FAULT = const(7)
+RUN_END_PROGRAM = const(8)
+
+SHAPE_STEP = const(0)
+SHAPE_RAMP = const(1)
+
+BURST_TRIGGER_NOW = const(0)
+BURST_TRIGGER_SETPOINT_CHANGE = const(1)
+BURST_TRIGGER_FAULT = const(2)
+
+READING_KIND_VOLTAGE = const(0)
+READING_KIND_CURRENT = const(1)
+READING_KIND_HEATSINK = const(2)
+READING_KIND_FORCE = const(3)
+READING_KIND_MISSED = const(4)
+
+SELF_TEST_PASSED = const(0)
+SELF_TEST_IMAGE = const(1)
+SELF_TEST_STORE = const(2)
+SELF_TEST_ADC = const(3)
+SELF_TEST_DAC = const(4)
+SELF_TEST_CALIBRATION = const(5)
+
 RESET_POWER_ON = const(1)
 RESET_WATCHDOG = const(2)
 RESET_SOFT = const(3)
@@ -195,3 +283,6 @@ EVENT_CLEARED = const(5)
 EVENT_SOURCE_LIMITS = const(6)
 EVENT_SOURCE_RETURNED = const(7)
 EVENT_LOG = const(8)
+EVENT_ENDED = const(9)
+EVENT_BUTTON = const(10)
+EVENT_RESTART = const(11)

@@ -8,6 +8,9 @@ Allocates nothing after construction. Bus errors (OSError) pass through to the c
 
 from micropython import const
 
+from chips import NOT_CONVERTING, NOT_READY
+
+ON = "bus"
 # SBAS444, "Register Map"
 _POINTER_CONVERSION = const(0)
 _POINTER_CONFIG = const(1)
@@ -19,11 +22,6 @@ _MODE_SINGLE_SHOT = const(0x0100)
 _DR_SHIFT = const(5)
 _COMP_QUE_DISABLE = const(0x0003)
 _INPUTS = const(4)
-
-#: What `finish` returns instead of counts; every true conversion lies above.
-NOT_READY = const(-40000)
-NOT_CONVERTING = const(-40001)
-LOWEST_COUNTS = const(-32768)
 
 
 class ADS1115:
@@ -59,10 +57,24 @@ class ADS1115:
         # Two's complement: the sign bit turned over counts from the lowest code up.
         return ((word[0] ^ 0x80) << 8 | word[1]) - 0x8000
 
+    def under_way(self):
+        """Whether the part says that it converts; true just after `begin`, unless it began nothing.
+
+        In single-shot mode OS reads 0 from the write that begins a conversion to its end ("Config Register"), which is
+        later than the read that follows at once: the longest read takes 0.3 ms, the shortest conversion 1 ms.
+        """
+        word = self._word
+        self._bus.readfrom_mem_into(self._address, _POINTER_CONFIG, word)
+        self.config_seen = word[0] << 8 | word[1]
+        return not word[0] & _OS >> 8
+
     def _why_not(self):
         self.config_seen = self._word[0] << 8 | self._word[1]
         busy = self._word[0] | _OS >> 8 == self._asked[0] and self._word[1] == self._asked[1]
         return NOT_READY if busy else NOT_CONVERTING
+
+
+DRIVER = ADS1115
 
 
 def _big_endian(word):

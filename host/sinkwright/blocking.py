@@ -13,8 +13,10 @@ import math
 from collections.abc import Coroutine, Iterator
 from typing import Any, Literal, Self, TypeVar
 
+from sinkwright import programs
 from sinkwright.errors import AskedTooMuch, LinkLost, ProtectionTripped, SinkwrightError
 from sinkwright.instrument import Instrument
+from sinkwright.programs import Burst, Program
 from sinkwright.readings import BoardIdentity, FaultDescription, LoadLimits, LoadStatus
 from sinkwright.runner import Runner
 from sinkwright.sample import FAULT, SINKING, Sample
@@ -45,7 +47,7 @@ def connect(url: str | None = None) -> Load:
 
 
 class Load:
-    """A load in hand, turned off whenever the `with` block is left. Currents in A, times in s."""
+    """A load in hand, turned off whenever the `with` block is left. Set-points in A, W, ohm or V, times in s."""
 
     def __init__(self, runner: Runner, instrument: Instrument) -> None:
         self.instrument = instrument
@@ -73,6 +75,18 @@ class Load:
         """Ask for a constant current, in A. It flows once the load is on."""
         self._run(self.instrument.set_current(current_A))
 
+    def set_power(self, power_W: float) -> None:
+        """Ask for a constant power, in W; a sample's `limiting_name` says "unreachable" where it is too much."""
+        self._run(self.instrument.set_power(power_W))
+
+    def set_resistance(self, resistance_ohm: float) -> None:
+        """Ask to be a constant resistance, in ohm."""
+        self._run(self.instrument.set_resistance(resistance_ohm))
+
+    def set_voltage(self, voltage_V: float) -> None:
+        """Ask to hold the source at a voltage, in V; it may take as much as the limits allow."""
+        self._run(self.instrument.set_voltage(voltage_V))
+
     def on(self, *, for_s: float | None = None) -> None:
         """Turn the load on, and return at once; it turns off after `for_s`.
 
@@ -87,6 +101,27 @@ class Load:
                 remedy="Say for how long: load.on(for_s=10).",
             )
         self._run(self._on(for_s))
+
+    def follow(self, program: Program) -> None:
+        """Turn the load on and return at once; the board follows `program` (values in A) and turns off with its end.
+
+        Raises AskedTooMuch for a program without an end, BoardRefused for one that the board cannot follow.
+        """
+        if not math.isfinite(program.duration_s):
+            raise AskedTooMuch(
+                "the load stays off, because the program repeats without end",
+                load="Nothing was sent to the load.",
+                remedy="Say how often: repeats=100.",
+            )
+        self._run(self._follow(program))
+
+    def arm_burst(self, trigger: Literal["now", "set-point", "fault"] = "now", *, before: int = 0) -> None:
+        """Have the board capture every conversion around `trigger`: see sinkwright.programs.arm_burst."""
+        self._run(programs.arm_burst(self.instrument, trigger, before=before))
+
+    def burst(self) -> Burst | None:
+        """What was captured, or None while it is not complete."""
+        return self._run(programs.fetch_burst(self.instrument))
 
     def off(self) -> None:
         """Turn the load off."""
@@ -151,11 +186,16 @@ class Load:
         await self._turn_off_in_time()
         return result
 
-    async def _on(self, for_s: float) -> None:
+    async def _follow(self, program: Program) -> None:
+        await self.instrument.set_current(program.steps[0].value if program.steps else 0.0)
+        await programs.load_program(self.instrument, program)
+        await self._on(program.duration_s + PATIENCE_S, program=True)
+
+    async def _on(self, for_s: float, *, program: bool = False) -> None:
         # Set before it is on: an interruption in between must still end with the load turned off.
         self._off_at_s = self._now_s() + for_s
         try:
-            await self.instrument.on()
+            await self.instrument.on(program=program)
         except SinkwrightError:
             self._off_at_s = None
             raise

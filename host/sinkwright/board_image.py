@@ -7,15 +7,22 @@ Rounding. A scale is split into whole and part: reading = n*whole + (n*part >> 1
 2**14 * fraction. The part errs by at most 2**-15 per count, so a full-scale reading errs by at most 1 uA
 or uV from it, and 1 more from the shift. Zero counts and the DAC's zero code are the nearest: what is left of
 the zero, below half a count or code, belongs to the current zero that the board measures before each run.
+
+`python -m sinkwright.board_image BOARD.toml` prints the image as the JSON that a real board keeps in board.json.
 """
 
 from __future__ import annotations
 
+import json
 import math
+import sys
 import zlib
+from pathlib import Path
 from typing import Any
 
 from .definitions.board import DAC_CODES, GAIN_BITS, RATE_BITS, BoardFile, Ntc
+from .definitions.parts import MONITOR_COUNT_V, MONITOR_SHARE
+from .guard_image import guard_image
 from .thermistor import divider_table
 
 IMAGE_VERSION = 1
@@ -45,6 +52,7 @@ def compile_board(board: BoardFile) -> dict[str, Any]:
         },
         "dac": _dac(board),
         "adc": _adc(board),
+        **_monitor(board),
         "scales": _scales(board),
         "thermistor": thermistor,
         "thermal": {"stages": _stages(board)},
@@ -52,6 +60,7 @@ def compile_board(board: BoardFile) -> dict[str, Any]:
         "zero_budget_uA": _uA(board.zero_budget_A),
         "off_current_uA": _uA(board.off_current_A),
         "demand_margin_uA": _uA(board.demand_margin_A),
+        **guard_image(board),
     }
 
 
@@ -80,7 +89,8 @@ def _pins(board: BoardFile) -> dict[str, int | None]:
 
 def _dac(board: BoardFile) -> dict[str, Any]:
     dac, sense = board.dac, board.current_sense
-    return {
+    own = {} if dac.pin is None else {"pin": dac.pin, "frequency_Hz": dac.frequency_Hz}
+    return own | {
         "part": dac.part,
         "address": dac.address,
         "zero_code": round(sense.pedestal_V / dac.code_V),
@@ -94,10 +104,26 @@ def _adc(board: BoardFile) -> dict[str, Any]:
     return {
         "part": adc.part,
         "address": adc.address,
-        "gain_bits": GAIN_BITS[adc.range_V],
-        "rate_bits": RATE_BITS[adc.samples_per_s],
+        "gain_bits": GAIN_BITS.get(adc.range_V, 0),
+        "rate_bits": RATE_BITS.get(adc.samples_per_s, 0),
         "conversion_us": adc.conversion_us,
         "inputs": {name: getattr(adc.inputs, name) for name in adc.inputs.__struct_fields__},
+    }
+
+
+def _monitor(board: BoardFile) -> dict[str, Any]:
+    monitor = board.monitor
+    if monitor is None:
+        return {}
+    limit_A = board.limits.current_A * MONITOR_SHARE
+    return {
+        "monitor": {
+            "part": monitor.part,
+            "address": monitor.address,
+            "pin": monitor.alert_pin,
+            "limit_uA": round(limit_A * 1e6),
+            "limit_counts": round(limit_A * monitor.shunt_ohm / MONITOR_COUNT_V),
+        }
     }
 
 
@@ -170,3 +196,24 @@ def _limits(board: BoardFile) -> dict[str, int]:
         "slew_uA_per_ms": round(limits.slew_A_per_s * 1000),
         "silence_ms": round(limits.host_silence_s * 1000),
     }
+
+
+def main(arguments: list[str]) -> int:
+    """Print the image of the board file named, or say in one paragraph why there is none."""
+    from .definitions.loading import load_board
+    from .errors import SinkwrightError
+
+    if len(arguments) != 1:
+        sys.stderr.write("usage: python -m sinkwright.board_image BOARD.toml\n")
+        return 2
+    try:
+        image = compile_board(load_board(Path(arguments[0])))
+    except SinkwrightError as error:
+        sys.stderr.write(f"{error}\n")
+        return error.exit_code
+    sys.stdout.write(json.dumps(image) + "\n")
+    return 0
+
+
+if __name__ == "__main__":
+    sys.exit(main(sys.argv[1:]))

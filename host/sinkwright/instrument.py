@@ -7,9 +7,11 @@ must not know plans, records or screens.
 from __future__ import annotations
 
 import contextlib
+import secrets
 from collections.abc import Callable
 from typing import Literal, Self, cast
 
+from sinkwright.board_run import BoardEnds, BoardRun, goes_on_alone
 from sinkwright.discovery import resolve
 from sinkwright.errors import BoardRefused, LinkLost, SinkwrightError
 from sinkwright.link import Link, Stop
@@ -33,12 +35,15 @@ from sinkwright_wire.messages import (
     GetFault,
     GetLimits,
     GetLog,
+    GetRun,
     GetStatus,
     Identify,
     Identity,
     Limits,
     LogEntries,
     LogEntry,
+    MarkFetched,
+    Run,
     SetPoint,
     SetTelemetry,
     Status,
@@ -59,6 +64,7 @@ class Instrument:
         self.identity = identity
         #: Called with each LoadEvent, in the order in which they came, while readings are fetched.
         self.on_event: list[Callable[[LoadEvent], None]] = []
+        self._runs_named = 0
 
     @classmethod
     async def open(
@@ -80,6 +86,7 @@ class Instrument:
             hello = await link.open(watch)
             identity = cast(Identity, await link.request(Identify()))
             instrument = cls(link, BoardIdentity.of(hello, identity, channel.url))
+            await instrument._leave_lone_run_alone()
             link.silence_s = (await instrument.limits()).silence_s
         except BaseException:
             link.close()
@@ -101,12 +108,38 @@ class Instrument:
         value_uA = to_integer(current_A, 1_000_000, "a current", "A")
         await self.link.request(SetPoint(Mode.CURRENT, value_uA))
 
-    async def on(self, when_host_silent: Literal["stop", "continue"] = "stop") -> None:
+    async def set_power(self, power_W: float) -> None:
+        """Ask for a constant power, on the side where it rises with the current.
+
+        More than the source can give is told by the samples' `limiting`: "unreachable".
+        """
+        value_uW = to_integer(power_W, 1_000_000, "a power", "W")
+        await self.link.request(SetPoint(Mode.POWER, value_uW))
+
+    async def set_resistance(self, resistance_ohm: float) -> None:
+        """Ask to be a constant resistance, to a milliohm. Zero is refused by the board."""
+        value_mohm = to_integer(resistance_ohm, 1_000, "a resistance", "ohm")
+        await self.link.request(SetPoint(Mode.RESISTANCE, value_mohm))
+
+    async def set_voltage(self, voltage_V: float) -> None:
+        """Ask to hold the source at a voltage by drawing what that takes, up to the limits in force.
+
+        A source with a hard current limit cannot be held so: `limiting` is then "unsettled".
+        """
+        value_uV = to_integer(voltage_V, 1_000_000, "a voltage", "V")
+        await self.link.request(SetPoint(Mode.VOLTAGE, value_uV))
+
+    async def on(
+        self, when_host_silent: Literal["stop", "continue"] = "stop", run: int = 0, *, program: bool = False
+    ) -> None:
         """Turn the load on. Waits until the board has measured its current zero with the gate clamped.
 
-        "stop" makes the board turn off by itself when this program falls silent (see `limits().silence_s`).
+        "stop" makes the board turn off by itself when this program falls silent (see `limits().silence_s`);
+        "continue" needs ends on the board (`set_ends`), and `mark_fetched` once the run is over. `run`, drawn
+        by the caller, is the name by which the run can be told from others afterwards. With `program` the load
+        follows the program that was loaded (sinkwright.programs) from the set-point on, and ends with it.
         """
-        message = Enable(Silence.CONTINUE if when_host_silent == "continue" else Silence.STOP)
+        message = Enable(Silence.CONTINUE if when_host_silent == "continue" else Silence.STOP, run, program)
         patience_s = ZERO_PATIENCE_S
         while True:
             try:
@@ -121,10 +154,39 @@ class Instrument:
                 await self.link.pause(wait_s)
                 patience_s -= wait_s
 
+    def name_run(self) -> int:
+        """A name for a run that is about to begin, by which its record can be found again."""
+        # Lock-step runs repeat byte for byte, and nothing outlives them that could be looked for.
+        if self.link.channel.lock_step:
+            self._runs_named += 1
+            return self._runs_named
+        return 1 + secrets.randbelow(0xFFFF_FFFF)
+
+    async def set_ends(self, ends: BoardEnds) -> None:
+        """Have the board itself end the run that goes on, or else the next one, host or no host."""
+        await self.link.request(ends.to_wire())
+
+    async def mark_fetched(self, run: int) -> None:
+        """Tell the board that its last run, of this name, is in a record: then it may begin another."""
+        with self.link.finishing():
+            await self.link.request(MarkFetched(run))
+
     async def off(self) -> None:
         """Clamp the gate. Taken by the board from anybody, at any time, also after a stop was asked for."""
         with self.link.finishing():
             await self.link.request(Disable())
+
+    async def restart(self, *, maintenance: bool = False) -> None:
+        """Have the board start anew, with its gate clamped; refused while the load is on.
+
+        For `maintenance` it starts without a watchdog and does not sink: so files can be copied. Set-points,
+        limits and ends are then the board's own again; `identity` is that of the new start. Raises LinkLost
+        where the port goes with the board, as a USB port does: open it anew.
+        """
+        hello = await self.link.restart(maintenance)
+        identity = cast(Identity, await self.link.request(Identify()))
+        self.identity = BoardIdentity.of(hello, identity, self.link.channel.url)
+        self.link.silence_s = (await self.limits()).silence_s
 
     async def clear(self) -> None:
         """Clear a latched fault; refused while its cause stands."""
@@ -165,6 +227,10 @@ class Instrument:
         """The latched fault in words, or None."""
         report = cast(FaultReport, await self.link.request(GetFault()))
         return FaultDescription.of(report) if report.fault else None
+
+    async def board_run(self) -> BoardRun:
+        """The board's run that goes on, or its last one."""
+        return BoardRun.of(cast(Run, await self.link.request(GetRun())))
 
     async def next_sample(self, timeout_s: float) -> Sample | None:
         """The next sample of the stream, or None when none came within `timeout_s` of the channel's clock."""
@@ -213,6 +279,15 @@ class Instrument:
             finally:
                 self.link.close()
         return failure
+
+    async def _leave_lone_run_alone(self) -> None:
+        """Give control back at once when a run goes on without its host: closing would turn it off."""
+        if not self.link.in_control:
+            return
+        run = await self.board_run()
+        if run.going and run.alone:
+            await self.link.release()
+            raise goes_on_alone(self.identity.name, await self.status())
 
     def _tell(self, event: LoadEvent) -> None:
         for listener in tuple(self.on_event):

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from sinkwright.readings import NOT_STOPPED_BY_OFF
 from sinkwright_wire.messages import Disable, Enable, Event, Status, Telemetry
-from sinkwright_wire.vocabulary import EventKind, Fault, State
+from sinkwright_wire.vocabulary import EventKind, Fault, Silence, State
 
 
 class LastKnown:
@@ -23,6 +23,8 @@ class LastKnown:
         self._board_us = 0
         #: Whether "on" was asked for and not answered: then it must not be called off.
         self._may_be_on = False
+        #: Whether the load was last told to go on without its host.
+        self._alone = False
 
     def note_push(self, push: object, now_s: float) -> None:
         """Take in what the board says by itself."""
@@ -43,7 +45,9 @@ class LastKnown:
 
     def note_request(self, request: object) -> None:
         """Take in what is about to be asked."""
-        self._may_be_on = self._may_be_on or isinstance(request, Enable)
+        if isinstance(request, Enable):
+            self._may_be_on = True
+            self._alone = request.when_silent == Silence.CONTINUE
 
     def note_refusal(self, request: object) -> None:
         """Take in that `request` was answered, and not carried out."""
@@ -61,6 +65,8 @@ class LastKnown:
     def sentence(self, now_s: float, silence_s: float) -> str:
         """State of the load, its age, and what the board will do without this host."""
         by_itself = f"the board turns it off by itself {silence_s:g} s after the last command that reached it"
+        if self._alone:
+            by_itself = "the board goes on to the ends of the run and keeps its curve for `sinkwright resume`"
         if self._may_be_on:
             return f"The load may be on: it was told so and did not answer. Without this program {by_itself}"
         if self._state is None:
@@ -99,6 +105,7 @@ _STATE_AFTER = {
     EventKind.BOOT: State.OFF,
     EventKind.ENABLED: State.SINKING,
     EventKind.DISABLED: State.OFF,
+    EventKind.ENDED: State.ENDED,
     EventKind.FAULT: State.FAULT,
     EventKind.CLEARED: State.OFF,
 }

@@ -19,7 +19,7 @@ from sinkwright.refusals import refused
 from sinkwright.stopping import StopRequest
 from sinkwright.traffic import LinkCounters, Traffic
 from sinkwright.transport.channel import Channel
-from sinkwright_wire.messages import Beat, Disable, HelloReply, Message, Refused, Request
+from sinkwright_wire.messages import Beat, Disable, HelloReply, Message, Refused, Request, Restart
 from sinkwright_wire.vocabulary import Refusal
 
 #: A reply takes one control step and two USB frames, about 5 ms (estimate); the rest is for a busy machine.
@@ -27,6 +27,8 @@ REPLY_TIMEOUT_S = 0.5
 TRIES = 3
 #: Some boards restart when their port is opened and answer nothing meanwhile.
 HELLO_TRIES = 5
+#: A board restarts within half a second (estimate); its converters and its store may take another.
+RESTART_PATIENCE_S = 5.0
 #: How often to ask again for a board that another program controlled.
 CONTROL_POLL_S = 0.5
 #: How long after one push the next may wait for company, on a real board. Below a run's frame interval (0.1
@@ -145,6 +147,24 @@ class Link:
             yield
         finally:
             self._finishing -= 1
+
+    async def restart(self, maintenance: bool = False) -> HelloReply:
+        """Have the board start anew, and take control of it once it is back.
+
+        Raises BoardRefused while the load is on, and LinkLost when the board does not come back on this
+        channel. A USB port goes with its board: it has to be opened anew.
+        """
+        before = self.hello.boot_number
+        await self.request(Restart(maintenance))
+        until_s = self.channel.now_s() + RESTART_PATIENCE_S
+        while True:
+            self._traffic.expect_restart()
+            hello = await self.open()
+            if hello.boot_number != before:
+                return hello
+            if self.channel.reached(until_s):
+                raise failures.not_restarted(self._traffic.where())
+            await self._traffic.receive(self.channel.now_s() + CONTROL_POLL_S)
 
     async def release(self) -> None:
         """Give up control, so that the next program need not wait for the silence limit."""

@@ -40,6 +40,16 @@ def restarted(where: str) -> LinkLost:
     )
 
 
+def not_restarted(where: str) -> LinkLost:
+    """The error for a board that was asked to restart and answers as if nothing had been."""
+    return LinkLost(
+        "the board was asked to restart and has not",
+        where=where,
+        load="A board restarts with its gate clamped, and takes the request only while the load is off.",
+        remedy="Switch the board off and on again.",
+    )
+
+
 def held_by_another(where: str, heard_ms: int) -> BoardRefused:
     """The error for a board that another program controls."""
     return BoardRefused(

@@ -10,6 +10,7 @@ from typing import Self
 
 from sinkwright.errors import AskedTooMuch
 from sinkwright.refusals import HUMAN_UNITS, fault_in_words, in_human_units
+from sinkwright.sample import SETPOINT_PARTS, SETPOINT_UNITS
 from sinkwright.wire_units import to_integer
 from sinkwright_wire.messages import (
     Event,
@@ -21,7 +22,7 @@ from sinkwright_wire.messages import (
     SetLimits,
     Status,
 )
-from sinkwright_wire.vocabulary import EventKind, Fault, Limiting, Mode, ResetCause, State
+from sinkwright_wire.vocabulary import EventKind, Fault, Limiting, Mode, ResetCause, RunEnd, State
 
 #: A transistor failed short, or the body diode of a reversed source: the clamped gate changes nothing.
 NOT_STOPPED_BY_OFF = (Fault.CURRENT_ALTHOUGH_OFF, Fault.REVERSED_SOURCE)
@@ -140,7 +141,7 @@ class LoadStatus:
             mode=status.mode,
             limiting=status.limiting,
             fault=status.fault,
-            setpoint_SI=status.setpoint / (1e3 if status.mode == Mode.RESISTANCE else 1e6),
+            setpoint_SI=status.setpoint / SETPOINT_PARTS.get(status.mode, 1_000_000),
             voltage_V=status.voltage_uV / 1e6,
             current_A=status.current_uA / 1e6,
             force_V=status.force_uV / 1e6,
@@ -154,6 +155,11 @@ class LoadStatus:
             discarded=status.discarded,
             log_entries=status.log_entries,
         )
+
+    @property
+    def setpoint_unit(self) -> str:
+        """The unit of `setpoint_SI`: A, W, ohm or V; empty while no set-point was given."""
+        return SETPOINT_UNITS.get(self.mode, "")
 
     @property
     def in_words(self) -> str:
@@ -231,8 +237,12 @@ class LoadEvent:
         """One sentence for a person."""
         if self.kind == EventKind.BOOT:
             return ResetCause(self.code).sentence
+        if self.kind == EventKind.ENDED:
+            return f"The board ended the run. {RunEnd(self.code).sentence}"
         if self.kind == EventKind.FAULT:
             return fault_in_words(Fault(self.code), self.value, self.limit)
+        if self.kind == EventKind.SOURCE_LIMITS and self.code not in _PLAIN_SHORTAGE:
+            return Limiting(self.code).sentence
         if self.kind == EventKind.SOURCE_LIMITS:
             demand = in_human_units(self.limit, "uA")
             return (
@@ -241,12 +251,17 @@ class LoadEvent:
         return _EVENT_WORDS[self.kind]
 
 
+#: Where what flows and what was asked for say it best; 0 is an event without a reason.
+_PLAIN_SHORTAGE = (Limiting.NONE, Limiting.SOURCE)
+
 _EVENT_WORDS = {
     EventKind.ENABLED: "The load was turned on.",
     EventKind.DISABLED: "The load was turned off.",
     EventKind.CLEARED: "A fault was cleared.",
     EventKind.SOURCE_RETURNED: "The source gives what is asked for again.",
     EventKind.LOG: "The board's run log was thinned out to make room.",
+    EventKind.BUTTON: "The OFF button was pressed.",
+    EventKind.RESTART: "The board is about to restart, as it was asked to.",
 }
 
 

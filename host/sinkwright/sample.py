@@ -12,7 +12,17 @@ from typing import Any, Protocol
 #: The wire's numbers for states and modes, as names for people and records (wire reference, State and Mode).
 STATE_NAMES = {0: "off", 1: "sinking", 2: "ended", 3: "fault"}
 MODE_NAMES = {0: "none", 1: "current", 2: "power", 3: "resistance", 4: "voltage"}
-LIMITING_NAMES = {0: "none", 1: "source", 2: "ramping", 3: "derated", 4: "no-source", 5: "saturated"}
+LIMITING_NAMES = {
+    0: "none",
+    1: "source",
+    2: "ramping",
+    3: "derated",
+    4: "no-source",
+    5: "saturated",
+    6: "unreachable",
+    7: "unresolved",
+    8: "unsettled",
+}
 
 SINKING = 1
 FAULT = 3
@@ -20,6 +30,8 @@ _CURRENT_MODE = 1
 
 #: Raw set-point units in each mode, as parts of one SI unit: uA, uW, mohm, uV.
 SETPOINT_PARTS = {1: 1_000_000, 2: 1_000_000, 3: 1_000, 4: 1_000_000}
+#: The SI unit of a set-point in each mode.
+SETPOINT_UNITS = {1: "A", 2: "W", 3: "ohm", 4: "V"}
 
 
 class TelemetryFields(Protocol):
@@ -96,6 +108,11 @@ class Sample:
         """The set-point in ampere, watt, ohm or volt, as the mode has it; not a number without a mode."""
         parts = SETPOINT_PARTS.get(self.mode)
         return self.setpoint / parts if parts else float("nan")
+
+    @property
+    def setpoint_unit(self) -> str:
+        """The unit of `setpoint_SI`: A, W, ohm or V; empty without a mode."""
+        return SETPOINT_UNITS.get(self.mode, "")
 
     @property
     def voltage_V(self) -> float:

@@ -58,6 +58,12 @@ class Traffic:
         self._seen = bytearray()
         self._met = False
 
+    def expect_restart(self) -> None:
+        """Forget the board as it was: the next greeting is of another boot, and that is no failure."""
+        self.hello = None
+        self.last_known = LastKnown()
+        self.pushes.clear()
+
     def send(self, data: bytes) -> None:
         """Hand `data` to the channel. Raises LinkLost with what is known of the load."""
         try:

@@ -13,10 +13,11 @@ from sinkwright.errors import AskedTooMuch
 _LARGEST = 0x7FFF_FFFF
 
 
-def to_integer(value: float, parts: int, what: str, unit: str) -> int:
+def to_integer(value: float, parts: int, what: str, unit: str, largest: int = _LARGEST) -> int:
     """`value` (SI, in `unit`) as a whole number of `parts` per unit. `what` names it in errors: "a current".
 
-    Raises AskedTooMuch for what is no number, not finite, below zero, or too large for the wire.
+    `largest` is what its field can carry. Raises AskedTooMuch for what is no number, not finite, below zero,
+    or too large for the wire.
     """
     if isinstance(value, bool) or not isinstance(value, (int, float)):
         raise _refused(f"{what} must be a number of {unit}, not {value!r}", unit)
@@ -24,9 +25,9 @@ def to_integer(value: float, parts: int, what: str, unit: str) -> int:
         raise _refused(f"{what} of {value} {unit} is no quantity", unit)
     if value < 0:
         raise _refused(f"{what} cannot be negative ({value:g} {unit})", unit)
-    if value * parts > _LARGEST:
+    if value * parts > largest:
         raise _refused(
-            f"{what} of {value:g} {unit} is beyond what any board can be told ({_LARGEST / parts:g} {unit})",
+            f"{what} of {value:g} {unit} is beyond what any board can be told ({largest / parts:g} {unit})",
             unit,
         )
     return round(value * parts)

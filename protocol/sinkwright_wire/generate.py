@@ -14,9 +14,18 @@ from collections.abc import Iterator
 from enum import IntEnum
 from pathlib import Path
 
-from .layouts import HEADER, LOG_ENTRY, MAX_ENTRIES, MAX_PAYLOAD, MAX_TEXT, NEVER_HEARD, VERSION
+from .layouts import (
+    HEADER,
+    MAX_ENTRIES,
+    MAX_PAYLOAD,
+    MAX_READINGS,
+    MAX_STEPS,
+    MAX_TEXT,
+    NEVER_HEARD,
+    VERSION,
+)
 from .mapping import Laid, struct_format
-from .messages import MESSAGES
+from .messages import ENTRIES, MESSAGES
 from .reference import render_reference
 from .vocabulary import VOCABULARY, EventKind, ResetCause
 
@@ -44,11 +53,9 @@ def _fields(layout: object) -> Iterator[str]:
     return iter(textwrap.wrap(names, 100, initial_indent="# ", subsequent_indent="# "))
 
 
-def _message_lines(message: type[Laid], message_id: int) -> Iterator[str]:
-    name = _upper_snake(message.__name__)
-    yield f"{name} = const(0x{message_id:02X})"
-    yield from _fields(message.LAYOUT)
-    yield f'{name}_FORMAT = "{struct_format(message.LAYOUT)}"'
+def _format_lines(laid: type[Laid]) -> Iterator[str]:
+    yield from _fields(laid.LAYOUT)
+    yield f'{_upper_snake(laid.__name__)}_FORMAT = "{struct_format(laid.LAYOUT)}"'
 
 
 def _word_lines(words: type[IntEnum]) -> Iterator[str]:
@@ -65,6 +72,8 @@ def render_wire() -> str:
         f"MAX_PAYLOAD = const({MAX_PAYLOAD})",
         f"MAX_TEXT = const({MAX_TEXT})",
         f"MAX_ENTRIES = const({MAX_ENTRIES})",
+        f"MAX_STEPS = const({MAX_STEPS})",
+        f"MAX_READINGS = const({MAX_READINGS})",
         f"NEVER_HEARD = const(0x{NEVER_HEARD:08X})",
         "",
         *_fields(HEADER),
@@ -72,8 +81,13 @@ def render_wire() -> str:
         f"HEADER_SIZE = const({HEADER.sizeof()})",
     ]
     for message_id, message in sorted(MESSAGES.items()):
-        lines += ["", *_message_lines(message, message_id)]
-    lines += ["", *_fields(LOG_ENTRY), f'LOG_ENTRY_FORMAT = "{struct_format(LOG_ENTRY)}"']
+        lines += [
+            "",
+            f"{_upper_snake(message.__name__)} = const(0x{message_id:02X})",
+            *_format_lines(message),
+        ]
+    for entry in ENTRIES:
+        lines += ["", *_format_lines(entry)]
     for words in VOCABULARY:
         lines += ["", *_word_lines(words)]
     return "\n".join(lines) + "\n"

@@ -1,8 +1,9 @@
 """How every message lies in bytes: the single truth of the wire, from which firmware/wire.py is generated.
 
 Little-endian throughout. Layouts are of fixed length, except for a tail that takes the rest of the payload
-(LOG_LINE, LOG_ENTRIES). The header's version byte and the layouts of HELLO and HELLO_REPLY never change:
-two versions must be able to meet and say so. Nothing here knows the dataclasses or the framing.
+(LOG_LINE, LOG_ENTRIES, LOAD_PROGRAM, BURST_READINGS). The header's version byte and the layouts of HELLO
+and HELLO_REPLY never change: two versions must be able to meet and say so. Nothing here knows the dataclasses
+or the framing.
 """
 
 from __future__ import annotations
@@ -31,7 +32,17 @@ VERSION = 1
 MAX_PAYLOAD = 112
 MAX_TEXT = 100
 MAX_ENTRIES = 4
+MAX_STEPS = 10
+MAX_READINGS = 16
 NEVER_HEARD = 0xFFFFFFFF
+
+
+class Tail(GreedyRange):
+    """Entries of one layout up to the end of the payload, `most` of them."""
+
+    def __init__(self, layout: Struct, most: int) -> None:
+        super().__init__(layout)
+        self.most = most
 
 
 def _field(kind: Any, name: str, meaning: str = "") -> Construct:
@@ -98,7 +109,65 @@ SET_POINT = Struct(
     _u8("mode", "Mode"),
     _i32("value", "uA, uW, mohm or uV, after the mode"),
 )
-ENABLE = Struct(_u8("when_silent", "Silence"))
+ENABLE = Struct(
+    _u8("when_silent", "Silence"),
+    _u32("run", "drawn by the host, so that the run can be told from others; 0: no name"),
+    _u8("program", "1: follow the loaded program"),
+)
+SET_ENDS = Struct(
+    _i32("voltage_uV", "ends when the voltage is at or below; 0: no such end"),
+    _u32("charge_mC", "ends when so much charge has flowed; 0: no such end"),
+    _u32("energy_mJ", "ends when so much energy was taken; 0: no such end"),
+    _u32("duration_ms", "ends after so long; 0: no such end"),
+    _i32("temperature_mC", "ends when the heatsink is at or above; 0: no such end"),
+)
+RUN = Struct(
+    _u32("run", "as its Enable named it; 0: none, or no name"),
+    _u8("state", "State"),
+    _u8("ended_by", "RunEnd"),
+    _u8("fetched", "1: nobody need fetch it (any more)"),
+    _u8("when_silent", "Silence"),
+    _u64("started_us", "by the board's clock"),
+    _u64("ended_us", "by the board's clock; 0: it goes on, or there was none"),
+    _i64("charge_uC", "microcoulomb since the run's start"),
+    _i64("energy_uJ", "microjoule since the run's start"),
+    _u16("log_entries", "entries in the run log"),
+    _u32("spacing_ms", "time between entries"),
+)
+MARK_FETCHED = Struct(_u32("run", "the run that was fetched"))
+
+PROGRAM_STEP = Struct(
+    _u32("duration_ms"),
+    _i32("value", "uA, uW, mohm or uV, after the mode in force"),
+    _u8("shape", "Shape"),
+    _u8("trigger", "1: the trigger output is high during this step"),
+)
+LOAD_PROGRAM = Struct(
+    _u8("first", "number of the first step here"),
+    _u8("total", "steps of the whole program; 0: none, forget the one before"),
+    _u16("repeats", "how often it runs through; 0: until the run ends"),
+    _field(Tail(PROGRAM_STEP, MAX_STEPS), "steps", f"up to {MAX_STEPS} ProgramStep"),
+)
+
+ARM_BURST = Struct(
+    _u16("before", "readings to keep from before the trigger"),
+    _u8("trigger", "BurstTrigger"),
+)
+GET_BURST = Struct(_u16("first", "the first reading wanted"))
+BURST_READING = Struct(
+    _u8("kind", "ReadingKind"),
+    _i32("value", "uV, uA or mC, after the kind; 0: missed"),
+)
+BURST_READINGS = Struct(
+    _u16("first", "number of the first reading here"),
+    _u16("total", "readings captured; 0: not yet triggered, or not yet complete"),
+    _u16("before", "how many of them are from before the trigger"),
+    _u64("started_us", "when the first reading's conversion began, by the board's clock"),
+    _u32("step_us", "time between readings: one a control step"),
+    _field(Tail(BURST_READING, MAX_READINGS), "readings", f"up to {MAX_READINGS} BurstReading"),
+)
+
+RESTART = Struct(_u8("maintenance", "1: start without watchdog and stay off, so that files can be written"))
 
 STATUS = Struct(
     _u64("time_us", "the board's clock"),
@@ -145,7 +214,7 @@ LOG_ENTRIES = Struct(
     _u16("first", "number of the first entry here"),
     _u16("total", "entries in the log"),
     _u32("spacing_ms", "time between entries"),
-    _field(GreedyRange(LOG_ENTRY), "entries", "up to 4 LogEntry"),
+    _field(Tail(LOG_ENTRY, MAX_ENTRIES), "entries", f"up to {MAX_ENTRIES} LogEntry"),
 )
 
 DONE = Struct(_u8("request", "id of the request that was carried out"))

@@ -24,14 +24,13 @@ from construct import (
     ConstructError,
     FormatField,
     GreedyBytes,
-    GreedyRange,
     Renamed,
     Struct,
     Terminated,
 )
 
 from .errors import BadField, Malformed, UnknownValue
-from .layouts import MAX_ENTRIES, MAX_TEXT
+from .layouts import MAX_TEXT, Tail
 
 
 class Laid:
@@ -80,7 +79,7 @@ class Rule:
 
 def is_tail(field: Construct) -> bool:
     """Whether a field takes the rest of the payload."""
-    return field is GreedyBytes or isinstance(field, GreedyRange)
+    return field is GreedyBytes or isinstance(field, Tail)
 
 
 _LONG_AS_INT = str.maketrans("lL", "iI")
@@ -152,12 +151,10 @@ def _text(size: int, padded: bool) -> Rule:
     return Rule(f"text of at most {size} bytes in UTF-8, without NUL", fits, to_wire, from_wire)
 
 
-def _entries(entry: type[Laid]) -> Rule:
+def _entries(entry: type[Laid], most: int) -> Rule:
     def fits(value: Any) -> bool:
         return (
-            isinstance(value, tuple)
-            and len(value) <= MAX_ENTRIES
-            and all(isinstance(one, entry) for one in value)
+            isinstance(value, tuple) and len(value) <= most and all(isinstance(one, entry) for one in value)
         )
 
     def to_wire(entries: tuple[Laid, ...]) -> list[dict[str, Any]]:
@@ -167,12 +164,12 @@ def _entries(entry: type[Laid]) -> Rule:
         names = [field.name for field in entry.LAYOUT.subcons]
         return tuple(entry.CODEC.from_values([one[name] for name in names]) for one in raw)
 
-    return Rule(f"a tuple of at most {MAX_ENTRIES} {entry.__name__}", fits, to_wire, from_wire)
+    return Rule(f"a tuple of at most {most} {entry.__name__}", fits, to_wire, from_wire)
 
 
 def _rule(name: str, field: Construct, hint: Any, message: str) -> Rule:
-    if isinstance(field, GreedyRange):
-        return _entries(hint.__args__[0])
+    if isinstance(field, Tail):
+        return _entries(hint.__args__[0], field.most)
     if hint is str:
         greedy = field is GreedyBytes
         return _text(MAX_TEXT if greedy else field.sizeof(), padded=not greedy)

@@ -1,110 +1,85 @@
 """Every message as a frozen dataclass, the registry of them, and the way to bytes and back.
 
-A message checks its own fields when it is made. Quantities carry their unit in the field's name; the
-meaning of the other fields stands beside the layout, in layouts.py. Requests name the message that answers
-them. Framing, check sequence and sequence numbers are not decided here.
+Those about a run stand in run_messages.py, and are to be had from here as well. Quantities carry their unit in
+the field's name; the meaning of the other fields stands beside the layout, in layouts.py. Framing, check sequence
+and sequence numbers are not decided here.
 """
 
 from __future__ import annotations
 
 import struct
-from collections.abc import Callable
 from dataclasses import dataclass
-from typing import ClassVar, TypeVar, dataclass_transform
-
-from construct import Struct
 
 from . import layouts
 from .errors import BadField, Malformed, UnknownMessage, VersionMismatch
 from .layouts import HEADER, MAX_PAYLOAD, NEVER_HEARD, VERSION
-from .mapping import Laid, laid_out, struct_format
+from .mapping import struct_format
+from .registry import MESSAGES, Done, Message, Push, Refused, Request, message
+from .run_messages import (
+    ENTRIES,
+    ArmBurst,
+    BurstReading,
+    BurstReadings,
+    GetBurst,
+    GetLog,
+    GetRun,
+    LoadProgram,
+    LogEntries,
+    LogEntry,
+    MarkFetched,
+    ProgramStep,
+    Run,
+    SetEnds,
+)
 from .vocabulary import (
     EventKind,
     Fault,
-    LimitField,
     Limiting,
     LimitSet,
     Mode,
-    Refusal,
     ResetCause,
     Silence,
     State,
 )
 
-__all__ = ["HEADER_SIZE", "MAX_PAYLOAD", "MESSAGES", "NEVER_HEARD", "VERSION", "Envelope", "pack", "parse"]
+__all__ = [
+    "ENTRIES",
+    "HEADER_SIZE",
+    "MAX_PAYLOAD",
+    "MESSAGES",
+    "NEVER_HEARD",
+    "VERSION",
+    "ArmBurst",
+    "BurstReading",
+    "BurstReadings",
+    "Done",
+    "Envelope",
+    "GetBurst",
+    "GetLog",
+    "GetRun",
+    "LoadProgram",
+    "LogEntries",
+    "LogEntry",
+    "MarkFetched",
+    "Message",
+    "ProgramStep",
+    "Push",
+    "Refused",
+    "Request",
+    "Run",
+    "SetEnds",
+    "pack",
+    "parse",
+]
 
 HEADER_SIZE: int = HEADER.sizeof()
 _split_header = struct.Struct(struct_format(HEADER)).unpack_from
 
 
-class Message(Laid):
-    """Anything that crosses the wire in a frame of its own."""
-
-    __slots__ = ()
-    ID: ClassVar[int]
-
-
-class Request(Message):
-    """What a host asks; REPLY is the message that says it was done."""
-
-    __slots__ = ()
-    REPLY: ClassVar[type[Message]]
-
-
-class Push(Message):
-    """What the board sends unasked."""
-
-    __slots__ = ()
-
-
-MESSAGES: dict[int, type[Message]] = {}
-
-MessageClass = TypeVar("MessageClass", bound=Message)
-
-
-@dataclass_transform(frozen_default=True)
-def _message(
-    message_id: int, layout: Struct, reply: type[Message] | None = None
-) -> Callable[[type[MessageClass]], type[MessageClass]]:
-    """Class decorator: makes the frozen dataclass of a layout, and enters it under its id."""
-
-    def register(declared: type[MessageClass]) -> type[MessageClass]:
-        cls = laid_out(layout)(declared)
-        if message_id in MESSAGES:
-            raise TypeError(f"{cls.__name__} and {MESSAGES[message_id].__name__} share an id")
-        cls.ID = message_id
-        if issubclass(cls, Request) and reply is not None:
-            cls.REPLY = reply
-        MESSAGES[message_id] = cls
-        return cls
-
-    return register
-
-
-# Answers that serve several requests
-
-
-@_message(0xC0, layouts.DONE)
-class Done(Message):
-    """The request was carried out."""
-
-    request: int
-
-
-@_message(0xC1, layouts.REFUSED)
-class Refused(Message):
-    """The request was not carried out, and nothing has changed."""
-
-    request: int
-    refusal: Refusal
-    field: LimitField = LimitField.NONE
-    detail: int = 0
-
-
 # Who is there
 
 
-@_message(0x81, layouts.HELLO_REPLY)
+@message(0x81, layouts.HELLO_REPLY)
 class HelloReply(Message):
     """Who answers, and whether this session controls the load."""
 
@@ -120,7 +95,7 @@ class HelloReply(Message):
     other_heard_ms: int
 
 
-@_message(0x01, layouts.HELLO, reply=HelloReply)
+@message(0x01, layouts.HELLO, reply=HelloReply)
 class Hello(Request):
     """Opens a session, whose number is in the header, and takes control unless it only watches."""
 
@@ -128,7 +103,7 @@ class Hello(Request):
     watch: bool = False
 
 
-@_message(0x82, layouts.IDENTITY)
+@message(0x82, layouts.IDENTITY)
 class Identity(Message):
     """What the board is made of."""
 
@@ -140,7 +115,7 @@ class Identity(Message):
     interpreter: str
 
 
-@_message(0x02, layouts.EMPTY, reply=Identity)
+@message(0x02, layouts.EMPTY, reply=Identity)
 class Identify(Request):
     """Asks what the board is made of."""
 
@@ -148,7 +123,7 @@ class Identify(Request):
 # Limits and set-point
 
 
-@_message(0x83, layouts.LIMITS)
+@message(0x83, layouts.LIMITS)
 class Limits(Message):
     """The limits in force, or those that the board itself stands."""
 
@@ -161,14 +136,14 @@ class Limits(Message):
     silence_ms: int
 
 
-@_message(0x03, layouts.GET_LIMITS, reply=Limits)
+@message(0x03, layouts.GET_LIMITS, reply=Limits)
 class GetLimits(Request):
     """Asks for one of the two sets of limits."""
 
     which: LimitSet = LimitSet.IN_FORCE
 
 
-@_message(0x04, layouts.LIMITS, reply=Done)
+@message(0x04, layouts.LIMITS, reply=Done)
 class SetLimits(Request):
     """Puts limits in force. Refused as BEYOND_BOARD with the field and the largest value that fits."""
 
@@ -181,7 +156,7 @@ class SetLimits(Request):
     silence_ms: int
 
 
-@_message(0x05, layouts.SET_POINT, reply=Done)
+@message(0x05, layouts.SET_POINT, reply=Done)
 class SetPoint(Request):
     """What to hold: the value in uA, uW, mohm or uV after the mode."""
 
@@ -189,22 +164,38 @@ class SetPoint(Request):
     value: int
 
 
-@_message(0x06, layouts.ENABLE, reply=Done)
+@message(0x06, layouts.ENABLE, reply=Done)
 class Enable(Request):
-    """Turns the load on."""
+    """Turns the load on, which begins a run.
+
+    CONTINUE is refused as ENDS_MISSING without a voltage end and a charge or duration end; any Enable is refused
+    as RUN_NOT_FETCHED while a finished run that was allowed to go on alone has not been marked as fetched.
+    """
 
     when_silent: Silence = Silence.STOP
+    run: int = 0
+    program: bool = False
 
 
-@_message(0x07, layouts.EMPTY, reply=Done)
+@message(0x07, layouts.EMPTY, reply=Done)
 class Disable(Request):
     """Turns the load off; accepted from anybody, in any session, and never refused."""
+
+
+@message(0x15, layouts.RESTART, reply=Done)
+class Restart(Request):
+    """Restarts the board with its gate clamped.
+
+    Refused as LOAD_IS_ON while it sinks, and as RUN_NOT_FETCHED where a run would be lost.
+    """
+
+    maintenance: bool = False
 
 
 # What is going on
 
 
-@_message(0x88, layouts.STATUS)
+@message(0x88, layouts.STATUS)
 class Status(Message):
     """What the load is doing, with the board's own counters."""
 
@@ -228,12 +219,12 @@ class Status(Message):
     log_entries: int
 
 
-@_message(0x08, layouts.EMPTY, reply=Status)
+@message(0x08, layouts.EMPTY, reply=Status)
 class GetStatus(Request):
     """Asks what the load is doing; answered in any session."""
 
 
-@_message(0x8C, layouts.FAULT_REPORT)
+@message(0x8C, layouts.FAULT_REPORT)
 class FaultReport(Message):
     """The latched fault; value and limit are in the unit of the Fault."""
 
@@ -244,62 +235,32 @@ class FaultReport(Message):
     time_us: int
 
 
-@_message(0x0C, layouts.EMPTY, reply=FaultReport)
+@message(0x0C, layouts.EMPTY, reply=FaultReport)
 class GetFault(Request):
     """Asks which fault is latched."""
 
 
-@_message(0x09, layouts.EMPTY, reply=Done)
+@message(0x09, layouts.EMPTY, reply=Done)
 class ClearFault(Request):
     """Clears the latched fault; refused while its cause stands."""
 
 
-@_message(0x0E, layouts.EMPTY, reply=Done)
+@message(0x0E, layouts.EMPTY, reply=Done)
 class Beat(Request):
     """Tells the board that its host is alive; any other frame of the controlling session does so too."""
 
 
-# Telemetry and log
+# Telemetry, log and burst
 
 
-@_message(0x0A, layouts.SET_TELEMETRY, reply=Done)
+@message(0x0A, layouts.SET_TELEMETRY, reply=Done)
 class SetTelemetry(Request):
     """How often readings are pushed."""
 
     every_steps: int
 
 
-@laid_out(layouts.LOG_ENTRY)
-class LogEntry(Laid):
-    """One line of the run log that the board keeps."""
-
-    time_ms: int
-    voltage_uV: int
-    voltage_min_uV: int
-    voltage_max_uV: int
-    current_uA: int
-    heatsink_cC: int
-    charge_mC: int
-
-
-@_message(0x8D, layouts.LOG_ENTRIES)
-class LogEntries(Message):
-    """A piece of the run log; fewer entries than fit mean that the log ends here."""
-
-    first: int
-    total: int
-    spacing_ms: int
-    entries: tuple[LogEntry, ...] = ()
-
-
-@_message(0x0D, layouts.GET_LOG, reply=LogEntries)
-class GetLog(Request):
-    """Asks for a piece of the run log."""
-
-    first: int = 0
-
-
-@_message(0x40, layouts.TELEMETRY)
+@message(0x40, layouts.TELEMETRY)
 class Telemetry(Push):
     """Readings, pushed at the rate that was set."""
 
@@ -326,7 +287,7 @@ class Telemetry(Push):
     dropped: int
 
 
-@_message(0x41, layouts.LOG_LINE)
+@message(0x41, layouts.LOG_LINE)
 class LogLine(Push):
     """Something the firmware has to say in words."""
 
@@ -334,7 +295,7 @@ class LogLine(Push):
     text: str
 
 
-@_message(0x42, layouts.EVENT)
+@message(0x42, layouts.EVENT)
 class Event(Push):
     """Something happened on the board; code, value and limit follow from the kind."""
 

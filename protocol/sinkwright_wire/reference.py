@@ -9,13 +9,13 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from enum import IntEnum
 
-from construct import Construct, FormatField, GreedyBytes, GreedyRange, Struct
+from construct import Construct, FormatField, GreedyBytes, Struct
 
 from .conversation import RULES, Arrival, Turn
 from .framing import ESCAPE, ESCAPED, FLAG, GOOD_FINAL_FCS
-from .layouts import HEADER, LOG_ENTRY, MAX_ENTRIES, MAX_PAYLOAD, MAX_TEXT, VERSION
-from .mapping import bare
-from .messages import MESSAGES, LogEntry, Message, Push, Request
+from .layouts import HEADER, MAX_PAYLOAD, MAX_TEXT, VERSION, Tail
+from .mapping import Laid, bare
+from .messages import ENTRIES, MESSAGES, Message, Push, Request
 from .vocabulary import VOCABULARY, Fault
 
 _INTRODUCTION = f"""# The wire
@@ -62,12 +62,17 @@ def _table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> Iterator[str]:
         yield "| " + " | ".join(row) + " |"
 
 
+def _entry_of(tail: Tail) -> type[Laid]:
+    """The dataclass whose layout a tail repeats."""
+    return next(entry for entry in ENTRIES if entry.LAYOUT is tail.subcon)
+
+
 def _type_of(field: Construct) -> tuple[str, int | None]:
     """The field's type in words, and its size in octets if that is fixed."""
     if field is GreedyBytes:
         return f"text, up to {MAX_TEXT}", None
-    if isinstance(field, GreedyRange):
-        return f"LogEntry, up to {MAX_ENTRIES}", None
+    if isinstance(field, Tail):
+        return f"{_entry_of(field).__name__}, up to {field.most}", None
     size = field.sizeof()
     if isinstance(field, FormatField):
         return f"{'i' if field.fmtstr[-1].islower() else 'u'}{8 * size}", size
@@ -105,14 +110,17 @@ def _messages() -> Iterator[str]:
         yield f"\n## {title}"
         for message in group:
             yield from _message_section(message)
-        if _carries_entries(group):
-            yield f"\n### LogEntry\n\n{LogEntry.__doc__}\n"
-            yield from _byte_table(LOG_ENTRY)
+        for entry in _entries_of(group):
+            yield f"\n### {entry.__name__}\n\n{entry.__doc__}\n"
+            yield from _byte_table(entry.LAYOUT)
 
 
-def _carries_entries(group: Sequence[type[Message]]) -> bool:
-    """Whether one of these messages carries log entries, whose own table then follows."""
-    return any(isinstance(bare(field), GreedyRange) for message in group for field in message.LAYOUT.subcons)
+def _entries_of(group: Sequence[type[Message]]) -> Iterator[type[Laid]]:
+    """The entries that these messages carry, whose own tables then follow."""
+    for message in group:
+        for field in map(bare, message.LAYOUT.subcons):
+            if isinstance(field, Tail):
+                yield _entry_of(field)
 
 
 def _codes(words: type[IntEnum]) -> Iterator[str]:

@@ -48,7 +48,13 @@ class Limiting(Word):
     RAMPING = 2, "The current is on its way to the set-point, as fast as the slew limit lets it."
     DERATED = 3, "The board is hot and draws less than was asked, so as not to trip."
     NO_SOURCE = 4, "No source is there: voltage and current are both missing."
-    SATURATED = 5, "The set-point cannot be reached with this source."
+    SATURATED = (
+        5,
+        "The set-point takes more current or power than the limits allow: the load draws the most of it.",
+    )
+    UNREACHABLE = 6, "The set power is more than the source can give: P > Voc^2 / (4 Rs)."
+    UNRESOLVED = 7, "The set-point is finer than the board can resolve with this source."
+    UNSETTLED = 8, "The set-point cannot be held steadily, as a voltage against a hard current limit."
 
 
 class Fault(IntEnum):
@@ -85,7 +91,30 @@ class Fault(IntEnum):
     REVERSED_SOURCE = 14, "uV", "The source is connected the wrong way round: disconnect it."
     LOOP_LATE = 15, "us", "A control step came so late that the protections could not be relied on."
     EXCEPTION = 16, "", "The firmware met an error of its own and turned the load off."
-    SELF_TEST = 17, "", "The board did not pass its own test at start."
+    SELF_TEST = 17, "", "The board did not pass its own test at start (the value is a SelfTest)."
+    SENSE_LEAD = (
+        18,
+        "uV",
+        "The sense leads do not show what the force leads carry: one is open, loose or swapped.",
+    )
+    THERMISTOR_LOOSE = 19, "mC", "The thermistor does not warm as the power demands: it has come off."
+    COOLING_WEAK = (
+        20,
+        "mC",
+        "The heatsink warms more than its cooling should let it: check the fan and the air.",
+    )
+    SUPPLY_LOW = 21, "mV", "The board's own supply sank too low for its readings to be relied on."
+    CONVERTER_STUCK = (
+        22,
+        "",
+        "A converter answers but does not do what it is told (the value is its register).",
+    )
+    CURRENT_MISSING = (
+        23,
+        "uA",
+        "Less current was read than was asked for although the source's voltage stands: sense resistor, gate drive or "
+        "DAC has failed, and more may have flowed than was shown.",
+    )
 
 
 class Refusal(Word):
@@ -107,6 +136,17 @@ class Refusal(Word):
     ZERO_OUT_OF_BUDGET = 14, "With the load off the current reads further from zero than the parts allow."
     NO_SESSION = 15, "The board knows nothing of this session: it must begin with a hello."
     WRONG_VERSION = 16, "The board speaks another version of the wire."
+    ENDS_MISSING = (
+        17,
+        "A run that may go on without a host needs a voltage end and a charge or duration end.",
+    )
+    RUN_NOT_FETCHED = (
+        18,
+        "A run that went on without its host has not been fetched yet; the detail is its state.",
+    )
+    PROGRAM_BAD = 19, "The program cannot be followed; the detail is the number of the step."
+    BOARD_IMAGE = 20, "The board did not pass its own test at start; the detail is a SelfTest."
+    TOO_LONG = 21, "That is more than the board has room for; the detail is what fits."
 
 
 class LimitField(Word):
@@ -136,6 +176,56 @@ class Silence(Word):
     CONTINUE = 1, "Go on to the run's own end."
 
 
+class RunEnd(Word):
+    """What ended a run."""
+
+    NONE = 0, "It has not ended, or there was none."
+    VOLTAGE = 1, "The source's voltage came down to the end voltage."
+    CHARGE = 2, "The charge asked for has flowed."
+    ENERGY = 3, "The energy asked for was taken."
+    DURATION = 4, "The time asked for is over."
+    TEMPERATURE = 5, "The end temperature was reached."
+    DISABLED = 6, "It was turned off."
+    FAULT = 7, "A protection tripped."
+    PROGRAM = 8, "The program has run through."
+
+
+class Shape(Word):
+    """How a step of a program comes to its value."""
+
+    STEP = 0, "At once, as fast as the slew limit lets it."
+    RAMP = 1, "Evenly over the step, from where the step before ended."
+
+
+class BurstTrigger(Word):
+    """What a burst waits for."""
+
+    NOW = 0, "Nothing: it begins at once."
+    SETPOINT_CHANGE = 1, "The next change of the set-point."
+    FAULT = 2, "The next fault."
+
+
+class ReadingKind(Word):
+    """What one reading of a burst is of."""
+
+    VOLTAGE = 0, "The source's voltage, in uV."
+    CURRENT = 1, "The current, in uA."
+    HEATSINK = 2, "The heatsink's temperature, in mC."
+    FORCE = 3, "The voltage at the load's own terminals, in uV."
+    MISSED = 4, "Nothing: no conversion was ready at that control step."
+
+
+class SelfTest(Word):
+    """What the board's own test at start found."""
+
+    PASSED = 0, "Nothing wrong."
+    IMAGE = 1, "The board file on the board is missing, damaged or incomplete."
+    STORE = 2, "The store holds nothing valid although it has been written."
+    ADC = 3, "The ADC does not answer or does not convert."
+    DAC = 4, "The DAC does not answer, or its power-up value is not zero."
+    CALIBRATION = 5, "The stored calibration is outside the tolerances of the parts."
+
+
 class ResetCause(Word):
     """Why the board last started."""
 
@@ -156,6 +246,9 @@ class EventKind(Word):
     SOURCE_LIMITS = 6, "The source limits; code is a Limiting, value the current, limit the demand (uA)."
     SOURCE_RETURNED = 7, "The source meets the demand again; value is the current, limit the demand (uA)."
     LOG = 8, "The run log was thinned out to make room; value is its new spacing in ms."
+    ENDED = 9, "The board ended the run by itself; code is a RunEnd."
+    BUTTON = 10, "The OFF button was pressed."
+    RESTART = 11, "The board is about to restart on request."
 
 
 VOCABULARY: tuple[type[IntEnum], ...] = (
@@ -167,6 +260,11 @@ VOCABULARY: tuple[type[IntEnum], ...] = (
     LimitField,
     LimitSet,
     Silence,
+    RunEnd,
+    Shape,
+    BurstTrigger,
+    ReadingKind,
+    SelfTest,
     ResetCause,
     EventKind,
 )

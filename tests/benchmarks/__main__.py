@@ -19,6 +19,7 @@ NAMES = (
     "start_up",
     "frames_decoded",
     "simulated_board",
+    "time_budget",
     "recording_host",
     "report_from_many_samples",
 )

@@ -40,7 +40,8 @@ b = board.open_board()
 import main, states, wire
 f = main.Firmware(b)
 for _ in range(300): f.turn()
-f.control.ask(1500000); f.control.start(); f.meter.restart(); f.log.begin(); f.machine.fire(states.ENABLE)
+f.control.obey(wire.MODE_CURRENT, 1500000); f.control.start(); f.meter.restart(); f.log.begin()
+f.machine.fire(states.ENABLE)
 f.guard.quiet_steps = -1 << 28
 for _ in range(2000): f.turn()
 word = bytearray(2); order = bytearray([0xC3, 0xE3])

@@ -22,10 +22,12 @@ _CHECK = """
     total = {figure}
     total = {figure}
     micropython.heap_lock()
-    for _ in range({steps}):
-        wait()
-        step()
-    micropython.heap_unlock()
+    try:
+        for _ in range({steps}):
+            wait()
+            step()
+    finally:
+        micropython.heap_unlock()
     found = [{figure} - total, firmware.guard.fault, firmware.meter.telemetry.pairs]
 """
 
@@ -34,6 +36,17 @@ ARRANGEMENTS = {
     "off": "session.ask(wire.DISABLE); session.board.show(0, 12_000_000)",
     "source limits": "session.firmware.guard.quiet_steps = -10000; session.board.show(100_000, 50_000)",
     "set-point changes": "session.firmware.guard.quiet_steps = -10000; session.firmware.control.ask(0)",
+    "constant power": "session.firmware.guard.quiet_steps = -10000; "
+    "session.firmware.control.obey(wire.MODE_POWER, 6_000_000)",
+    "constant resistance": "session.firmware.guard.quiet_steps = -10000; "
+    "session.firmware.control.obey(wire.MODE_RESISTANCE, 20_000)",
+    "constant voltage": "session.firmware.guard.quiet_steps = -10000; "
+    "session.firmware.control.obey(wire.MODE_VOLTAGE, 11_990_000)",
+    "source gives way": "session.firmware.guard.quiet_steps = -10000; "
+    "session.firmware.control.obey(wire.MODE_RESISTANCE, 6_000); session.board.show(500_000, 150_000)",
+    "source vanishes": "session.firmware.guard.quiet_steps = -10000; session.board.show(0, 0)",
+    "source returns": "session.firmware.guard.quiet_steps = -10000; session.board.show(0, 0); "
+    "session.turns(8); session.board.show(None, 12_000_000)",
     "over-current": "session.board.show(5_900_000, 12_000_000)",
     "hot": "session.board.show(None, 12_000_000, 90_000)",
     "host silent": "session.firmware.guard.quiet_steps = 1270",
@@ -41,6 +54,7 @@ ARRANGEMENTS = {
     "not ready": "session.board.bus.ready = False",
     "other channel": "session.board.bus.converting = False",
     "reversed": "session.board.show(0, -1_000_000)",
+    "run ends": "session.ask(wire.SET_ENDS, struct.pack(wire.SET_ENDS_FORMAT, 1, 900, 9000, 500, 90_000))",
     "extremes": "session.board.bus.counts[:] = [32767, -32768, 32767, -32768]",
 }
 

@@ -16,7 +16,7 @@ def test_enabling_ramps_to_the_set_point_at_the_slew_limit() -> None:
                                                  85_000, 125_000, 10_000, 3_000))
         session.ask(wire.SET_POINT, struct.pack(wire.SET_POINT_FORMAT, wire.MODE_CURRENT, 1_000_000))
         session.board.show(0, 12_000_000)
-        session.ask(wire.ENABLE, bytes([wire.SILENCE_STOP]))
+        session.ask(wire.ENABLE, struct.pack(wire.ENABLE_FORMAT, wire.SILENCE_STOP, 0, 0))
         found = []
         for _ in range(60):
             session.turns(1)
@@ -107,6 +107,80 @@ def test_a_conversion_that_is_not_ready_is_waited_for_and_not_taken() -> None:
         found = [waiting, session.firmware.guard.fault]
     """)
     assert found == [[pytest.approx(1_000_000, abs=1500), 0], 0]
+
+
+def test_a_source_that_vanishes_clamps_in_the_step_whose_reading_shows_it() -> None:
+    """Two readings are needed, a voltage and a current: the slow inputs between them cost a step at most."""
+    found = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        session.board.show(0, 0)
+        steps = 0
+        while session.board.gate.released:
+            session.turns(1)
+            steps += 1
+        control = session.firmware.control
+        found = [steps, control.demand_uA, session.board.bus.code, session.firmware.machine.state, control.limiting]
+    """)
+    assert found[0] <= 3
+    assert found[1:] == [0, 0, 1, 4]
+
+
+def test_a_source_that_came_back_is_loaded_by_the_ramp_once_its_voltage_stands_still() -> None:
+    found = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        session.ask(wire.SET_LIMITS, struct.pack(wire.SET_LIMITS_FORMAT, 4_000_000, 30_000_000, 40_000_000,
+                                                 85_000, 125_000, 10_000, 3_000))
+        session.board.show(0, 0)
+        session.turns(10)
+        # Contacts that bounce: the voltage stands still for 20 ms at most.
+        released = 0
+        for _ in range(8):
+            for volt in (12_000_000, 3_000_000):
+                session.board.show(0, volt)
+                session.turns(8)
+                released += session.board.gate.released
+        session.board.show(0, 12_000_000)
+        waited = 0
+        while not session.board.gate.released:
+            session.turns(1)
+            waited += 1
+        session.board.show(None, 12_000_000)
+        demands = []
+        for _ in range(100):
+            session.turns(1)
+            demands.append(session.firmware.control.demand_uA)
+        found = [released, waited, demands, session.firmware.guard.fault]
+    """)
+    released, waited, demands, fault = found
+    assert (released, fault) == (0, 0)
+    assert waited * 2.35 == pytest.approx(75, abs=15)
+    steps = [after - before for before, after in zip(demands, demands[1:], strict=False)]
+    assert max(steps) == 23_500
+    assert demands[-1] == 2_000_000
+
+
+def test_a_shorted_source_is_one_that_limits_and_not_one_that_vanished() -> None:
+    found = on_board("""
+        session = Session()
+        session.sink(2_000_000)
+        session.board.show(50_000, 4_000)
+        session.turns(40)
+        found = [session.firmware.control.limiting, session.board.gate.released, session.firmware.machine.held]
+    """)
+    assert found == [1, True, False]
+
+
+def test_the_law_in_force_is_told_with_its_set_point_in_its_own_unit() -> None:
+    found = on_board("""
+        session = Session()
+        session.take_control()
+        session.ask(wire.SET_POINT, struct.pack(wire.SET_POINT_FORMAT, wire.MODE_RESISTANCE, 6_500))
+        status = struct.unpack(wire.STATUS_FORMAT, session.ask(wire.GET_STATUS)[1])
+        found = [status[2], status[5]]
+    """)
+    assert found == [3, 6_500]
 
 
 @pytest.mark.parametrize("name", ARRANGEMENTS)

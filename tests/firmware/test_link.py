@@ -80,6 +80,11 @@ def on_link(lines: str, **given: Any) -> Any:
 def test_the_board_produces_every_golden_frame_from_its_own_formats():
     found = on_link(
         """
+        ENTRIES = {
+            "entries": "LOG_ENTRY_FORMAT",
+            "steps": "PROGRAM_STEP_FORMAT",
+            "readings": "BURST_READING_FORMAT",
+        }
         found = []
         with open(golden) as file:
             frames = json.load(file)["frames"]
@@ -90,7 +95,7 @@ def test_the_board_produces_every_golden_frame_from_its_own_formats():
                 if isinstance(value, dict):
                     values.append(binascii.unhexlify(value["hex"]))
                 elif isinstance(value, list):
-                    tail = b"".join(struct.pack(wire.LOG_ENTRY_FORMAT, *one) for one in value)
+                    tail = b"".join(struct.pack(getattr(wire, ENTRIES[field]), *one) for one in value)
                 elif field == "text":
                     tail = value.encode()
                 else:

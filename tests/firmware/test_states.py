@@ -20,7 +20,7 @@ def test_only_sinking_releases_the_gate_whatever_the_event() -> None:
         import states
         found = []
         for state in range(4):
-            for event in range(4):
+            for event in range(5):
                 board = Board()
                 machine = states.Machine(board.gate, board.led)
                 machine.state = state
@@ -35,14 +35,14 @@ def test_nothing_but_clearing_leaves_a_fault() -> None:
     after = on_board("""
         import states
         found = []
-        for event in (states.ENABLE, states.DISABLE, states.TRIP, states.CLEAR):
+        for event in (states.ENABLE, states.DISABLE, states.TRIP, states.CLEAR, states.END):
             board = Board()
             machine = states.Machine(board.gate, board.led)
             machine.fire(states.TRIP)
             machine.fire(event)
             found.append(machine.state)
     """)
-    assert after == [3, 3, 3, 0]
+    assert after == [3, 3, 3, 0, 3]
 
 
 def test_a_trip_ends_in_fault_from_everywhere() -> None:
@@ -57,3 +57,25 @@ def test_a_trip_ends_in_fault_from_everywhere() -> None:
             found.append(machine.state)
     """)
     assert after == [3, 3, 3, 3]
+
+
+def test_a_held_gate_is_released_by_nothing_but_the_return_of_the_source() -> None:
+    """Also not by clearing or enabling while it sinks from nothing; and off forgets that it was held."""
+    found = on_board("""
+        import states
+        board = Board()
+        machine = states.Machine(board.gate, board.led)
+        machine.fire(states.ENABLE)
+        machine.hold()
+        found = [[machine.state, board.gate.released]]
+        for event in (states.ENABLE, states.CLEAR):
+            machine.fire(event)
+            found.append(board.gate.released)
+        machine.rearm()
+        found.append(board.gate.released)
+        machine.hold()
+        machine.fire(states.DISABLE)
+        machine.rearm()
+        found.append([machine.state, machine.held, board.gate.released])
+    """)
+    assert found == [[1, False], False, False, True, [0, False, False]]

@@ -79,4 +79,4 @@ def test_the_heat_on_the_boards_page_is_worked_out_right() -> None:
     board = load_board()
     inner_K = 50 * board.transistor.junction_to_sink_K_per_W
     text = (DOCS / "boards.md").read_text(encoding="utf-8")
-    assert f"end at {40 + 50 * 0.6:.0f} °C, and the junction {inner_K:.0f} K above" in text
+    assert f"end at {40 + 50 * 0.5:.0f} °C, and the junction {inner_K:.0f} K above" in text

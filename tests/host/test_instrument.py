@@ -8,12 +8,13 @@ from typing import Any
 import pytest
 
 from sinkwright import instrument as module
-from sinkwright.errors import AskedTooMuch, BoardRefused, LinkLost
+from sinkwright.board_run import BoardEnds
+from sinkwright.errors import AskedTooMuch, BoardRefused, LinkLost, SinkwrightError
 from sinkwright.instrument import Instrument
 from sinkwright.readings import LoadEvent
 from sinkwright.runner import drive
 from sinkwright_wire import messages as m
-from sinkwright_wire.vocabulary import EventKind, Fault, Mode, Refusal, ResetCause, State
+from sinkwright_wire.vocabulary import EventKind, Fault, Mode, Refusal, ResetCause, RunEnd, Silence, State
 from tests.support.fake_board import FakeBoard
 from tests.support.fake_channels import LockStepFake
 
@@ -51,6 +52,20 @@ def test_the_identity_tells_who_answers(bench: Bench) -> None:
 def test_a_current_in_ampere_is_sent_in_microampere(bench: Bench) -> None:
     drive(bench.load.set_current(1.2345678))
     assert bench.board.acted[-1] == m.SetPoint(Mode.CURRENT, 1_234_568)
+
+
+def test_power_resistance_and_voltage_are_sent_in_the_units_of_their_modes(bench: Bench) -> None:
+    for coroutine in (
+        bench.load.set_power(12.5),
+        bench.load.set_resistance(6.0004),
+        bench.load.set_voltage(3.3),
+    ):
+        drive(coroutine)
+    assert bench.board.acted[-3:] == [
+        m.SetPoint(Mode.POWER, 12_500_000),
+        m.SetPoint(Mode.RESISTANCE, 6_000),
+        m.SetPoint(Mode.VOLTAGE, 3_300_000),
+    ]
 
 
 @pytest.mark.parametrize("current_A", [math.nan, math.inf, -math.inf, -0.001, 2148.0, 1e30, True, "1", None])
@@ -216,3 +231,82 @@ def test_an_opening_that_fails_lets_go_of_the_port(monkeypatch: pytest.MonkeyPat
     with pytest.raises(LinkLost, match="nothing answered"):
         drive(Instrument.open("fake:"))
     assert channel.closed
+
+
+def test_after_a_restart_it_is_the_new_start_that_is_controlled(bench: Bench) -> None:
+    before = bench.load.identity.boot_number
+    drive(bench.load.restart())
+    assert bench.load.identity.boot_number == before + 1
+    assert bench.load.link.in_control
+    drive(bench.load.set_current(1.0))
+
+
+def test_a_restart_is_refused_while_the_load_is_on(bench: Bench) -> None:
+    drive(bench.load.set_current(1.0))
+    drive(bench.load.on())
+    with pytest.raises(BoardRefused) as refused:
+        drive(bench.load.restart())
+    assert refused.value.refusal == Refusal.LOAD_IS_ON
+
+
+def test_a_board_that_does_not_restart_is_told(bench: Bench) -> None:
+    bench.board.answer_with[m.Restart] = m.Done(m.Restart.ID)
+    with pytest.raises(LinkLost, match="asked to restart and has not"):
+        drive(bench.load.restart(maintenance=True))
+
+
+def running_alone(monkeypatch: pytest.MonkeyPatch) -> tuple[FakeBoard, LockStepFake]:
+    """A board on which a run goes on without the host that started it."""
+    bench = Bench(monkeypatch)
+    drive(bench.load.set_current(1.0))
+    drive(bench.load.set_ends(BoardEnds(voltage_V=3.0, duration_s=60.0)))
+    drive(bench.load.on("continue", run=7))
+    bench.board.controller = 0
+    bench.board.acted.clear()
+    return bench.board, bench.channel
+
+
+def test_a_load_told_to_go_on_alone_gets_its_ends_and_its_name(bench: Bench) -> None:
+    drive(bench.load.set_current(1.0))
+    drive(bench.load.set_ends(BoardEnds(voltage_V=3.0, duration_s=60.0)))
+    drive(bench.load.on("continue", run=7))
+    assert m.SetEnds(3_000_000, 0, 0, 60_000, 0) in bench.board.acted
+    assert bench.board.acted[-1] == m.Enable(Silence.CONTINUE, 7)
+    run = drive(bench.load.board_run())
+    assert (run.run, run.going, run.alone, run.fetched) == (7, True, True, False)
+    drive(bench.load.mark_fetched(7))
+    assert drive(bench.load.board_run()).fetched
+
+
+def test_a_run_that_goes_on_alone_is_not_disturbed_by_whoever_connects(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    board, _ = running_alone(monkeypatch)
+    with pytest.raises(SinkwrightError, match="a run goes on by itself") as caught:
+        drive(Instrument.open("fake:"))
+    assert "sinkwright resume" in str(caught.value)
+    assert board.state == State.SINKING
+    assert not any(isinstance(message, m.Disable) for message in board.acted)
+
+
+def test_a_run_that_goes_on_alone_may_be_watched_and_turned_off(monkeypatch: pytest.MonkeyPatch) -> None:
+    board, _ = running_alone(monkeypatch)
+    watching = drive(Instrument.open("fake:", watch=True))
+    assert drive(watching.board_run()).going
+    drive(watching.off())
+    assert board.state == State.OFF
+
+
+def test_names_of_runs_differ_and_are_never_0(bench: Bench) -> None:
+    first, second = bench.load.name_run(), bench.load.name_run()
+    assert 0 < first != second > 0
+
+
+def test_an_end_on_the_board_is_told_in_words() -> None:
+    event = LoadEvent(1, 5, EventKind.ENDED, int(RunEnd.CHARGE), 0, 0)
+    assert (event.name, event.in_words) == (
+        "ended",
+        "The board ended the run. The charge asked for has flowed.",
+    )
+    for kind in (EventKind.BUTTON, EventKind.RESTART):
+        assert LoadEvent(1, 5, kind, 0, 0, 0).in_words.endswith(".")

@@ -7,6 +7,7 @@ The true firmware on the simulated board is tested in tests/system.
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
 from sinkwright_wire import messages as m
@@ -20,6 +21,8 @@ from sinkwright_wire.vocabulary import (
     Mode,
     Refusal,
     ResetCause,
+    RunEnd,
+    Silence,
     State,
 )
 
@@ -46,6 +49,7 @@ class FakeBoard:
         self.before_reply = b""
         self.reply_twice = False
         self.silent = False
+        self.restarts_at_us: int | None = None
         self.state = State.OFF
         self.fault = Fault.NONE
         self.setpoint_uA = 0
@@ -53,6 +57,7 @@ class FakeBoard:
         self.controller = 0
         self.zero_ready_us = 0
         self.mode = Mode.NONE
+        self.run = m.Run(0, State.OFF, RunEnd.NONE, True, Silence.STOP, 0, 0, 0, 0, 0, 1000)
         self._sequence = 0
         self._cached: tuple[int, bytes] | None = None
         self._deframer = Deframer()
@@ -88,6 +93,9 @@ class FakeBoard:
     def advance(self, duration_us: int) -> bytes:
         """Let the board's time pass, up to its next output."""
         end_us = self.time_us + duration_us
+        if self.restarts_at_us is not None and end_us >= self.restarts_at_us:
+            self.restarts_at_us = None
+            self.restart()
         if self._every_us and self._due_us <= end_us:
             self.time_us = max(self.time_us, self._due_us)
             self._due_us += self._every_us
@@ -118,7 +126,16 @@ class FakeBoard:
         message = envelope.message
         if isinstance(message, m.Hello):
             return self._greet(envelope, message)
-        free = (m.Identify, m.GetLimits, m.GetStatus, m.GetFault, m.GetLog, m.Disable)
+        free = (
+            m.Identify,
+            m.GetLimits,
+            m.GetStatus,
+            m.GetFault,
+            m.GetLog,
+            m.GetRun,
+            m.MarkFetched,
+            m.Disable,
+        )
         if not isinstance(message, free):
             if envelope.session != self.controller:
                 return m.Refused(envelope.id, Refusal.NOT_IN_CONTROL, detail=self.controller)
@@ -168,7 +185,7 @@ class FakeBoard:
         return None
 
     def _set_point(self, message: m.SetPoint) -> m.Message | None:
-        if message.value > self.limits[0]:
+        if message.mode == Mode.CURRENT and message.value > self.limits[0]:
             return m.Refused(message.ID, Refusal.BEYOND_LIMIT, LimitField.CURRENT, self.limits[0])
         self.mode, self.setpoint_uA = message.mode, message.value
         return None
@@ -182,6 +199,20 @@ class FakeBoard:
             wait_ms = -(-(self.zero_ready_us - self.time_us) // 1000)
             return m.Refused(message.ID, Refusal.ZERO_NOT_READY, detail=wait_ms)
         self.state = State.SINKING
+        alone = message.when_silent == Silence.CONTINUE
+        self.run = replace(
+            self.run, run=message.run, fetched=not alone, when_silent=message.when_silent,
+            started_us=self.time_us,
+        )  # fmt: skip
+        return None
+
+    def _get_run(self, _: m.Message) -> m.Run:
+        return replace(self.run, state=self.state)
+
+    def _mark_fetched(self, message: m.MarkFetched) -> m.Message | None:
+        if message.run != self.run.run:
+            return m.Refused(message.ID, Refusal.BAD_VALUE)
+        self.run = replace(self.run, fetched=True)
         return None
 
     def _disable(self, _: m.Message) -> None:
@@ -214,6 +245,12 @@ class FakeBoard:
         return m.LogEntries(
             message.first, len(entries), 1000, tuple(entries[message.first : message.first + 4])
         )
+
+    def _restart(self, _: m.Message) -> m.Message | None:
+        if self.state == State.SINKING:
+            return m.Refused(m.Restart.ID, Refusal.LOAD_IS_ON)
+        self.restarts_at_us = self.time_us + 200_000
+        return None
 
     def _beat(self, _: m.Message) -> None:
         """Only to be heard."""
@@ -258,5 +295,9 @@ _ACTIONS: dict[type[m.Message], Callable[[FakeBoard, Any], m.Message | None]] = 
     m.ClearFault: FakeBoard._clear,
     m.SetTelemetry: FakeBoard._ask_telemetry,
     m.GetLog: FakeBoard._log,
+    m.Restart: FakeBoard._restart,
     m.Beat: FakeBoard._beat,
+    m.SetEnds: FakeBoard._beat,
+    m.GetRun: FakeBoard._get_run,
+    m.MarkFetched: FakeBoard._mark_fetched,
 }

@@ -13,9 +13,11 @@ from pathlib import Path
 from types import SimpleNamespace
 from typing import Any
 
-from sinkwright.readings import FaultDescription, LoadLimits
+from sinkwright.board_run import BoardEnds, BoardRun
+from sinkwright.readings import FaultDescription, LoadLimits, RunLog
 from sinkwright.sample import Sample
-from sinkwright_wire.messages import Fault, Limiting, Mode, State
+from sinkwright_wire.messages import Fault, Limiting, LogEntry, Mode, State
+from sinkwright_wire.vocabulary import RunEnd
 
 #: What stays between the terminals of a load that is fully on.
 FLOOR_ohm = 0.075
@@ -87,6 +89,12 @@ class FakeInstrument:
         self.interval_s = 0.0
         self.limits_in_force = LoadLimits(4.0, 30.0, 40.0, 85.0, 125.0, 400.0, 3.0)
         self.calls: list[str] = []
+        self.ends = BoardEnds()
+        self.fetched: list[int] = []
+        self.kept: tuple[LogEntry, ...] = ()
+        self.ended_by = RunEnd.NONE
+        self.run = 0
+        self._run_began_us = 0
 
     # -- what procedures call -----------------------------------------------------------------------------
 
@@ -94,14 +102,37 @@ class FakeInstrument:
         self.calls.append(f"set {current_A:.3f}")
         self.demand_A = current_A
 
-    async def on(self, when_host_silent: str = "stop") -> None:
-        self.calls.append("on")
+    def name_run(self) -> int:
+        return self.run + 1
+
+    async def set_ends(self, ends: BoardEnds) -> None:
+        self.ends = ends
+
+    async def board_run(self) -> BoardRun:
+        state = State.SINKING if self.sinking else State.ENDED if self.ended_by else State.OFF
+        return BoardRun(
+            self.run, state, self.ended_by, True, False, self._run_began_us, self.time_us,
+            round(self.charge_uC), round(self.energy_uJ), 0,
+        )  # fmt: skip
+
+    async def log(self) -> RunLog:
+        return RunLog(1.0, self.kept)
+
+    async def mark_fetched(self, run: int) -> None:
+        self.fetched.append(run)
+
+    async def on(self, when_host_silent: str = "stop", run: int = 0) -> None:
+        self.calls.append("on" if when_host_silent == "stop" else "on alone")
         self.sinking = True
+        self.run = run
+        self._run_began_us = self.time_us
+        self.ended_by = RunEnd.NONE
         self.charge_uC = self.energy_uJ = 0.0
 
     async def off(self) -> None:
         self.calls.append("off")
         self.sinking = False
+        self.ended_by = RunEnd.NONE
 
     async def clear(self) -> None:
         self.calls.append("clear")
@@ -141,6 +172,11 @@ class FakeInstrument:
         self.number += 1
         return self._sample()
 
+    def end(self, reason: RunEnd) -> None:
+        """What the board's own ends do."""
+        self.ended_by = reason
+        self.sinking = False
+
     def trip(self, fault: Fault) -> None:
         """What a protection does."""
         self.fault_code = fault
@@ -158,6 +194,8 @@ class FakeInstrument:
         self.charge_uC += current_A * self.interval_s * 1e6
         self.energy_uJ += current_A * seen_V * self.interval_s * 1e6
         state = State.FAULT if self.fault_code else State.SINKING if self.sinking else State.OFF
+        if state == State.OFF and self.ended_by:
+            state = State.ENDED
         voltage_uV, current_uA = round(seen_V * 1e6), round(current_A * 1e6)
         return Sample(
             number=self.number, time_us=self.time_us, state=state, mode=Mode.CURRENT, limiting=limiting,
@@ -175,15 +213,20 @@ class FakeWriter:
 
     def __init__(self) -> None:
         self.path = Path("fake.sqlite")
+        self.failed = False
         self.samples: list[Sample] = []
         self.events: list[tuple[int, str, str, dict]] = []
         self.results: list[Any] = []
+        self.board_log: list[Any] = []
 
     def add_samples(self, samples: list[Sample]) -> None:
         self.samples.extend(samples)
 
     def add_event(self, time_us: int, kind: str, text: str, data: dict) -> None:
         self.events.append((time_us, kind, text, data))
+
+    def add_board_log(self, entries: list[Any]) -> None:
+        self.board_log.extend(entries)
 
     def add_result(self, result: Any) -> None:
         self.results.append(result)

@@ -8,7 +8,8 @@ from enum import IntEnum
 from pathlib import Path
 from typing import Any, get_type_hints
 
-from sinkwright_wire.messages import MESSAGES, LogEntry, Message
+from sinkwright_wire.mapping import Laid
+from sinkwright_wire.messages import MESSAGES, Message
 
 GOLDEN_FILE = Path(__file__).resolve().parents[1] / "data" / "golden_frames.json"
 
@@ -26,11 +27,17 @@ class GoldenFrame:
     frame: bytes
 
 
+def _entry(cls: type[Laid], raw: list[Any]) -> Laid:
+    hints = list(get_type_hints(cls).items())
+    values = zip((field.name for field in cls.LAYOUT.subcons), raw, strict=True)
+    return cls(**{name: _value(value, dict(hints)[name]) for name, value in values})
+
+
 def _value(raw: Any, hint: Any) -> Any:
     if isinstance(raw, dict):
         return bytes.fromhex(raw["hex"])
     if isinstance(raw, list):
-        return tuple(LogEntry(*entry) for entry in raw)
+        return tuple(_entry(hint.__args__[0], entry) for entry in raw)
     if hint is bool or (isinstance(hint, type) and issubclass(hint, IntEnum)):
         return hint(raw)
     return raw

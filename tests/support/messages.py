@@ -8,9 +8,9 @@ from typing import Any, get_type_hints
 from construct import Construct, FormatField, GreedyBytes
 from hypothesis import strategies as st
 
-from sinkwright_wire.layouts import MAX_ENTRIES, MAX_TEXT
+from sinkwright_wire.layouts import MAX_TEXT, Tail
 from sinkwright_wire.mapping import Laid, bare, number_range
-from sinkwright_wire.messages import MESSAGES, LogEntry, Message
+from sinkwright_wire.messages import MESSAGES, Message
 
 _SIGNS = st.characters(exclude_characters="\0", exclude_categories=["Cs"])
 
@@ -30,7 +30,8 @@ def _field(field: Construct, hint: Any) -> st.SearchStrategy[Any]:
         return st.sampled_from(list(hint))
     if isinstance(field, FormatField):
         return st.integers(*number_range(field))
-    return st.lists(laid(LogEntry), max_size=MAX_ENTRIES).map(tuple)
+    assert isinstance(field, Tail)
+    return st.lists(laid(hint.__args__[0]), max_size=field.most).map(tuple)
 
 
 def laid(cls: type[Laid]) -> st.SearchStrategy[Any]:

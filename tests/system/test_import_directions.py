@@ -19,12 +19,13 @@ LAYERS = (
     ("errors", "stopping", "units", "results", "sample", "thermistor", "wire_units", "firmware_files"),
     ("demo", "templates"),
     ("definitions", "uncertainty"),
-    ("board_image", "records", "refusals", "readings"),
+    ("board_image", "guard_image", "records", "refusals", "readings", "board_run"),
     ("simulator", "reports"),
     ("transport", "last_known"),
     ("link_failures", "traffic", "link"),
     ("discovery",),
     ("instrument", "runner"),
+    ("programs",),
     ("blocking",),
     ("procedures",),
     ("cli", "__main__"),
@@ -39,8 +40,8 @@ DEVICE_CODE = {"transport", "link", "instrument", "blocking", "procedures", "sim
 LAZY = {"numpy", "scipy", "matplotlib", "jinja2", "pyarrow", "GTC", "textual"}
 
 #: What the firmware may import besides its own files.
-MICROPYTHON = {"array", "binascii", "errno", "gc", "micropython", "struct", "sys"}
-BOARD_ONLY = {"json", "machine", "os", "select", "time"}
+MICROPYTHON = {"array", "binascii", "errno", "gc", "io", "json", "micropython", "struct", "sys"}
+BOARD_ONLY = {"machine", "os", "select", "time"}
 
 
 def sources(folder: Path) -> list[Path]:

@@ -22,6 +22,7 @@ COMMANDS: dict[str, tuple[str, str]] = {
     "demo": ("sinkwright.cli.demo:demo", "Measure an invented power supply on a simulated board."),
     "run": ("sinkwright.cli.run:run", "Carry out a plan on a load, with record and report."),
     "off": ("sinkwright.cli.off:off", "Turn the load off, whoever holds the board."),
+    "resume": ("sinkwright.cli.resume:resume", "Fetch a run that went on without this computer."),
     "records": ("sinkwright.cli.records:records", "List the records of runs."),
     "report": ("sinkwright.cli.report:report", "Write the HTML report of a record."),
     "export": ("sinkwright.cli.export:export", "Write a record's samples as CSV or Parquet."),

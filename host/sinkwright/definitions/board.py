@@ -13,6 +13,7 @@ import msgspec
 
 from .board_checks import check_board
 from .keys import KeyMistake, by_program, meaning, quantity, wording
+from .parts import check_part
 
 _Percent = Annotated[float, quantity("%", "Tolerance of this part, as a half-width.", ge=0, le=20)]
 _GpioPin = Annotated[int, quantity("", "GPIO number.", ge=0, le=29)]
@@ -32,8 +33,12 @@ RATE_BITS = {8: 0, 16: 1, 32: 2, 64: 3, 128: 4, 250: 5, 475: 6, 860: 7}
 #: Its oscillator may be 10 % slow, and it takes 25 us to wake up (from memory: SBAS444).
 SLOWEST_RATE = 0.9
 WAKE_UP_US = 25
-#: MCP4725 (Microchip DS22039): 12 bits, the supply is the reference, V = reference * code / 4096.
+#: MCP4725 (Microchip DS22039): 12 bits, the supply is the reference, V = reference * code / 4096. PWM likewise, near
+#: 30.5 kHz (RP2040 datasheet section 4.5.2: 125 MHz / 4096).
 DAC_CODES = 4096
+PWM_HZ = 30_518
+#: RP2040 datasheet section 4.9.2: 2 us a conversion; its driver takes the mean of 32.
+RP2_CONVERSION_US = 64
 
 
 class _Table(msgspec.Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
@@ -89,13 +94,27 @@ class I2C(_Table, frozen=True, kw_only=True):
 class Dac(_Table, frozen=True, kw_only=True):
     """The converter that sets the current."""
 
-    part: Annotated[Literal["MCP4725"], meaning("Part number.")] = "MCP4725"
+    part: Annotated[str, wording("Part number; PWM is the microcontroller's own output and a filter.")] = (
+        "MCP4725"
+    )
+    pin: Annotated[
+        _OptionalPin, meaning("GPIO number of the PWM output.", default="none: a chip on the bus")
+    ] = None
+    frequency_Hz: Annotated[int, quantity("Hz", "Frequency of the PWM output.", ge=1_000, le=100_000)] = (
+        PWM_HZ
+    )
     address: Annotated[int, quantity("", "Bus address.", ge=0x08, le=0x77)] = 0x60
     reference_V: Annotated[float, quantity("V", "Its supply, which is its reference.", ge=2.7, le=5.5)]
     reference_tolerance_percent: _Percent = 0.2
     integral_nonlinearity_counts: Annotated[
         float, quantity("counts", "Largest distance from the straight line.", ge=0, le=32)
     ] = 4.0
+
+    def __post_init__(self) -> None:
+        check_part("dac", self.part)
+        if (self.part == "PWM") != (self.pin is not None):
+            state = "is missing" if self.pin is None else f"is given, but the {self.part} is on the bus"
+            raise KeyMistake("pin", state, "PWM needs the number of its GPIO, a chip none")
 
     @property
     def code_V(self) -> float:
@@ -122,7 +141,7 @@ class AdcInputs(_Table, frozen=True, kw_only=True):
 class Adc(_Table, frozen=True, kw_only=True):
     """The converter that measures."""
 
-    part: Annotated[Literal["ADS1115"], meaning("Part number.")] = "ADS1115"
+    part: Annotated[str, wording("Part number; RP2 is the microcontroller's own converter.")] = "ADS1115"
     address: Annotated[int, quantity("", "Bus address.", ge=0x08, le=0x77)] = 0x48
     supply_V: Annotated[float, quantity("V", "Its supply; no input may exceed it.", ge=2.0, le=5.5)] = 3.3
     range_V: Annotated[
@@ -140,6 +159,15 @@ class Adc(_Table, frozen=True, kw_only=True):
     )
 
     def __post_init__(self) -> None:
+        check_part("adc", self.part)
+        if self.part == "RP2" and self.range_V != self.supply_V:
+            raise KeyMistake(
+                "range_V", f"{self.range_V:g} V is not its reference", "write the value of supply_V"
+            )
+        if self.part == "ADS1115":
+            self._check_ads1115()
+
+    def _check_ads1115(self) -> None:
         if self.range_V not in GAIN_BITS:
             right = "write one of " + ", ".join(f"{value:g}" for value in GAIN_BITS)
             raise KeyMistake("range_V", f"{self.range_V:g} V is no range of the {self.part}", right)
@@ -150,12 +178,26 @@ class Adc(_Table, frozen=True, kw_only=True):
     @property
     def conversion_us(self) -> int:
         """Longest time of one conversion."""
+        if self.part == "RP2":
+            return RP2_CONVERSION_US
         return math.ceil(1e6 / (self.samples_per_s * SLOWEST_RATE)) + WAKE_UP_US
 
     @property
     def count_V(self) -> float:
         """Volts per count."""
         return self.range_V / 32768
+
+
+class Monitor(_Table, frozen=True, kw_only=True):
+    """A current monitor with a shunt of its own, whose alert clamps the gate without the firmware."""
+
+    part: Annotated[str, wording("Part number.")] = "INA226"
+    address: Annotated[int, quantity("", "Bus address.", ge=0x08, le=0x77)] = 0x40
+    shunt_ohm: Annotated[float, quantity("ohm", "Its shunt, in the source lead.", gt=0, le=1)]
+    alert_pin: Annotated[_GpioPin, meaning("GPIO number at which its alert is read.")]
+
+    def __post_init__(self) -> None:
+        check_part("monitor", self.part)
 
 
 class CurrentSense(_Table, frozen=True, kw_only=True):
@@ -286,8 +328,34 @@ class Heatsink(_Table, frozen=True, kw_only=True):
     """Heatsink, with its fan if there is one."""
 
     K_per_W: Annotated[float, quantity("K/W", "From the sink to the air, fan running.", gt=0, le=100)]
-    time_constant_s: Annotated[float, quantity("s", "Time constant of the sink.", ge=1, le=10000)] = 180.0
+    K_per_W_tolerance_percent: Annotated[
+        float, quantity("%", "How much weaker the cooling may be before it is called weak.", ge=5, le=100)
+    ] = 30.0
+    still_air_K_per_W: (
+        Annotated[
+            float,
+            quantity("K/W", "The same, fan at rest.", default="5 times `K_per_W`", gt=0, le=500),
+        ]
+        | None
+    ) = None
+    time_constant_s: Annotated[float, quantity("s", "Time constant of the sink.", ge=10, le=10000)] = 180.0
+    time_constant_tolerance_percent: Annotated[
+        float, quantity("%", "How much longer it may be, for its mass is estimated.", ge=5, le=100)
+    ] = 30.0
     ambient_degC: Annotated[float, quantity("degC", "Warmest air it must work in.", ge=0, le=60)] = 40.0
+    coldest_air_degC: Annotated[float, quantity("degC", "Coldest air it works in.", ge=-20, le=20)] = 10.0
+
+    def __post_init__(self) -> None:
+        if self.still_K_per_W < self.K_per_W:
+            raise KeyMistake(
+                "still_air_K_per_W",
+                f"{self.still_K_per_W:g} K/W is less than with the fan",
+                f"choose at least {self.K_per_W:g} K/W, or leave it out",
+            )
+
+    @property
+    def still_K_per_W(self) -> float:
+        return 5 * self.K_per_W if self.still_air_K_per_W is None else self.still_air_K_per_W
 
 
 class Amplifier(_Table, frozen=True, kw_only=True):
@@ -340,6 +408,12 @@ class Protection(_Table, frozen=True, kw_only=True):
         ]
         | None
     ) = None
+    lead_allowance_ohm: Annotated[
+        float,
+        quantity(
+            "ohm", "Both leads together; a larger drop counts as a sense lead that is off.", gt=0, le=10
+        ),
+    ] = 0.5
 
 
 class BoardFile(msgspec.Struct, frozen=True, forbid_unknown_fields=True, kw_only=True):
@@ -353,6 +427,7 @@ class BoardFile(msgspec.Struct, frozen=True, forbid_unknown_fields=True, kw_only
     i2c: Annotated[I2C, meaning("The bus to the converters.")] = msgspec.field(default_factory=I2C)
     dac: Annotated[Dac, meaning("The converter that sets the current.")]
     adc: Annotated[Adc, meaning("The converter that measures.")] = msgspec.field(default_factory=Adc)
+    monitor: Annotated[Monitor, meaning("A second trip for the current.", default="not fitted")] | None = None
     current_sense: Annotated[CurrentSense, meaning("Sense resistor and amplifier.")]
     voltage_sense: Annotated[VoltageSense, meaning("Divider of the sense pair.")]
     force_sense: Annotated[ForceSense, meaning("Divider at the terminals.")]

@@ -12,19 +12,26 @@ from typing import TYPE_CHECKING
 
 from .. import thermistor
 from .keys import KeyMistake
+from .parts import MONITOR_FULL_SCALE_V, MONITOR_SHARE
 
 if TYPE_CHECKING:
     from .board import BoardFile
 
 _NAME_BYTES = 16
+#: The microcontroller's analogue inputs are GPIO 26 to 29 (RP2040 datasheet, table 2).
+_FIRST_ANALOGUE_PIN = 26
 #: Every product stays below 2**30 in the firmware: 4095 codes * uA_per_code_x64, 32767 counts * whole.
 _LARGEST_DAC_A = (1 << 30) / 4096 / 64 * 4095 / 1e6
-_LARGEST_PER_COUNT = 32767
+#: What the firmware's meter holds (firmware/meter.py).
+_LARGEST_CURRENT_A = 12.0
+_LARGEST_VOLTAGE_V = 80.0
 #: Bits on the bus in the busiest step: DAC write, conversion begun, config and result read (9 bits a byte).
 _BUS_BITS = 170
 #: Ripple of mains rectifiers: 50 and 60 Hz grids, one and two pulses, and their harmonics.
 _RIPPLE_HZ = tuple(sorted({base * n for base in (50, 60, 100, 120) for n in range(1, 5)}))
 _LEAST_BEAT_HZ = 1.0
+#: The firmware's derating.py: over the last 10 K below either limit there is less than the whole power.
+DERATING_K = 10.0
 _LEAST_COUNTS_PER_K = 5.0
 _OPEN_SHARE = 0.99
 
@@ -37,6 +44,7 @@ def check_board(board: BoardFile) -> None:
         _demand_reaches,
         _current_is_read,
         _voltages_are_read,
+        _monitor_reaches,
         _zero_is_read,
         _integers_fit,
         _heat_is_carried_away,
@@ -69,6 +77,15 @@ def _pins(board: BoardFile) -> None:
         other = users.setdefault(pin, f"pins.{name}") if pin is not None else f"pins.{name}"
         if other != f"pins.{name}":
             raise KeyMistake(f"pins.{name}", f"GPIO {pin} is taken by {other}", "give each its own")
+    own = {"dac.pin": board.dac.pin}
+    if board.monitor is not None:
+        own["monitor.alert_pin"] = board.monitor.alert_pin
+    if board.adc.part == "RP2":
+        own |= {f"adc.inputs {number}": _FIRST_ANALOGUE_PIN + number for number in range(4)}
+    for name, pin in own.items():
+        other = users.setdefault(pin, name) if pin is not None else name
+        if other != name:
+            raise KeyMistake(name.split()[0], f"GPIO {pin} is taken by {other}", "give each its own")
     if board.dac.address == board.adc.address:
         raise KeyMistake("adc.address", "is the DAC's too", "give each its own bus address")
 
@@ -122,6 +139,20 @@ def _voltages_are_read(board: BoardFile) -> None:
             )
 
 
+def _monitor_reaches(board: BoardFile) -> None:
+    if board.monitor is None:
+        return
+    if board.monitor.address in (board.dac.address, board.adc.address):
+        raise KeyMistake("monitor.address", "is another chip's too", "give each its own bus address")
+    largest_ohm = MONITOR_FULL_SCALE_V / (MONITOR_SHARE * board.limits.current_A)
+    if board.monitor.shunt_ohm > largest_ohm:
+        raise KeyMistake(
+            "monitor.shunt_ohm",
+            f"{board.monitor.shunt_ohm:g} ohm give more than {MONITOR_FULL_SCALE_V * 1000:g} mV at the trip",
+            f"choose at most {_down(largest_ohm)} ohm",
+        )
+
+
 def _zero_is_read(board: BoardFile) -> None:
     sense, adc = board.current_sense, board.adc
     error_V = sense.amplifier_offset_V * sense.amplifier_gain + adc.offset_counts * adc.count_V
@@ -143,25 +174,55 @@ def _integers_fit(board: BoardFile) -> None:
             f"with {sense.V_per_A:g} V/A the DAC spans {dac_A:.3g} A, more than the firmware's integers hold",
             f"choose resistance and gain so that it spans at most {_down(_LARGEST_DAC_A)} A",
         )
-    for key, per_count in (
-        ("current_sense.amplifier_gain", board.adc.count_V / sense.V_per_A * 1e6),
-        ("voltage_sense.ratio", board.adc.count_V * board.voltage_sense.ratio * 1e6),
-        ("force_sense.ratio", board.adc.count_V * board.force_sense.ratio * 1e6),
+    for key, per_count, pedestal_V, largest, unit in (
+        (
+            "current_sense.amplifier_gain",
+            board.adc.count_V / sense.V_per_A,
+            sense.pedestal_V,
+            _LARGEST_CURRENT_A,
+            "A",
+        ),
+        (
+            "voltage_sense.ratio",
+            board.adc.count_V * board.voltage_sense.ratio,
+            board.voltage_sense.pedestal_V,
+            _LARGEST_VOLTAGE_V,
+            "V",
+        ),
+        (
+            "force_sense.ratio",
+            board.adc.count_V * board.force_sense.ratio,
+            board.force_sense.pedestal_V,
+            _LARGEST_VOLTAGE_V,
+            "V",
+        ),
     ):
-        if not 1 <= per_count <= _LARGEST_PER_COUNT:
+        if per_count * 1e6 < 1:
             raise KeyMistake(
                 key,
-                f"gives {per_count:.3g} micro-units per count, beyond the firmware's integers",
-                f"choose it so that one count is 1 to {_LARGEST_PER_COUNT} uA or uV",
+                f"gives {per_count * 1e6:.3g} u{unit} per count, finer than the firmware's integers",
+                f"choose it so that one count is at least 1 u{unit}",
+            )
+        # The lowest code lies farthest from zero, because the pedestal lifts the zero.
+        span = per_count * 32768 + pedestal_V / board.adc.count_V * per_count
+        if span > largest:
+            raise KeyMistake(
+                key,
+                f"lets the converter span {span:.3g} {unit}, more than the {largest:g} {unit} that the firmware's "
+                "integers hold",
+                f"choose it, or adc.range_V, so that the lowest code means at most {largest:g} {unit}",
             )
 
 
 def _heat_is_carried_away(board: BoardFile) -> None:
-    """Steady state (JESD51: temperatures add up along the chain)."""
+    """Steady state (JESD51: temperatures add up along the chain), with the whole power still allowed there."""
     limits, sink = board.limits, board.heatsink
     chain = {
-        "heatsink_degC": (limits.heatsink_degC, sink.K_per_W),
-        "junction_degC": (limits.junction_degC, sink.K_per_W + board.transistor.junction_to_sink_K_per_W),
+        "heatsink_degC": (limits.heatsink_degC - DERATING_K, sink.K_per_W),
+        "junction_degC": (
+            limits.junction_degC - DERATING_K,
+            sink.K_per_W + board.transistor.junction_to_sink_K_per_W,
+        ),
     }
     most_W = min((top_degC - sink.ambient_degC) / resistance for top_degC, resistance in chain.values())
     for key, (top_degC, resistance) in chain.items():
@@ -171,7 +232,7 @@ def _heat_is_carried_away(board: BoardFile) -> None:
             raise KeyMistake(
                 "limits.power_W",
                 f"{limits.power_W:g} W from {sink.ambient_degC:g} degC over {resistance:.3g} K/W ends at "
-                f"{reached_degC:.0f} degC, above limits.{key} = {top_degC:g} degC",
+                f"{reached_degC:.0f} degC, above the {top_degC:g} degC from which limits.{key} takes power away",
                 f"{lower}, or take a better heatsink",
             )
 

@@ -9,9 +9,12 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Protocol
 
-from sinkwright.errors import LinkLost, ProtectionTripped
+from sinkwright.board_run import BoardEnds
+from sinkwright.errors import BoardRefused, LinkLost, ProtectionTripped
 from sinkwright.procedures.endings import DERATED, INTERRUPTED, TURNED_OFF, Stopped, name_of
 from sinkwright.procedures.progress import Doing, Progress, Reading, Warned
+from sinkwright.procedures.setpoint import SetPoint
+from sinkwright.records.board_log import BOARD_RUN, BoardRunName, GAP_us, LoggedEntry, logged
 from sinkwright_wire.messages import Fault, Limiting, State
 
 if TYPE_CHECKING:
@@ -52,6 +55,13 @@ class Bench:
     #: Length of the test going on, for the progress it shows.
     expected_s: float = field(default=0.0, init=False)
     _test_began_us: int = field(default=0, init=False)
+    _test_number: int = field(default=0, init=False)
+    #: Name of the run going on, if the board would go on with it alone.
+    _lone_run: int = field(default=0, init=False)
+    #: Stretches of that run of which no sample came, as while the computer sleeps.
+    _gaps: list[tuple[int, int]] = field(default_factory=list, init=False)
+    #: The board's log of the run that is over, if there were such stretches.
+    kept_by_board: list[LoggedEntry] = field(default_factory=list, init=False)
     #: Frames from before the load was turned on still arrive: only what was seen sinking can be seen to stop.
     _seen_sinking: bool = field(default=False, init=False)
     #: The board's time just after the newest command to sink: earlier frames were on their way already.
@@ -69,6 +79,7 @@ class Bench:
         """Count the progress of a test of about `expected_s` from here."""
         self.expected_s = expected_s
         self._test_began_us = self.now_us
+        self._test_number += 1
 
     def say(self, sentence: str, kind: str = "doing") -> None:
         """Tell the person and the record what the load is doing."""
@@ -85,15 +96,40 @@ class Bench:
         data = {"code": event.code, "value": event.value, "limit": event.limit}
         self.writer.add_event(event.time_us, event.name, event.in_words, data)
 
-    async def sink(self, current_A: float) -> None:
-        """Draw `current_A`; turns the load on if it is off, with a current zero measured just before."""
-        await self.instrument.set_current(current_A)
+    async def sink(self, current_A: float, ends: BoardEnds | None = None) -> None:
+        """Draw `current_A`; turns the load on if it is off, with a current zero measured just before.
+
+        With `ends` the board ends the run by itself, and goes on alone for them if the plan says so.
+        """
+        await self.hold(SetPoint("current_A", current_A), ends)
+
+    async def hold(self, setpoint: SetPoint, ends: BoardEnds | None = None) -> None:
+        """The same with a set-point of any mode."""
+        await setpoint.ask(self.instrument)
         if not self.sinking:
             # Told before it is so: a failure in between must still end with the load turned off.
             self.sinking = self.progress.sinking = True
-            await self.instrument.on(when_host_silent=self.plan.when_host_silent)
+            await self._begin_run(ends)
         self.commanded_us = (await self.instrument.status()).time_us
-        self.say(f"The load sinks {current_A:.3f} A.")
+        self.say(f"The load {setpoint.in_words}.")
+
+    async def _begin_run(self, ends: BoardEnds | None) -> None:
+        """Turn the load on under a name that the record keeps, so that `resume` finds one by the other."""
+        # Without ends of its own a board must not go on alone: the steps of other kinds are this program's.
+        alone = ends is not None and self.plan.when_host_silent == "continue"
+        run = self.instrument.name_run()
+        self.kept_by_board = []
+        wanted = ends or BoardEnds()
+        await self.instrument.set_ends(wanted if alone else wanted.tellable())
+        self.writer.add_event(
+            self.now_us,
+            BOARD_RUN,
+            f"Run {run:08X} begins on the board"
+            + (", which would go on with it alone." if alone else ", which stops it when it is left alone."),
+            BoardRunName(run, self._test_number, alone)._asdict(),
+        )
+        await self.instrument.on("continue" if alone else "stop", run)
+        self._lone_run = run if alone else 0
 
     async def off(self) -> None:
         """Clamp the gate. Never refused."""
@@ -101,6 +137,37 @@ class Bench:
         if self.sinking:
             self.say("The load is off.")
         self.sinking = self.progress.sinking = self._seen_sinking = False
+        if self._lone_run and not self.writer.failed:
+            await self._take_over_lone_run()
+
+    async def _take_over_lone_run(self) -> None:
+        """All of the run is in the record, or goes there now: the board need not keep it any longer."""
+        run, self._lone_run = self._lone_run, 0
+        try:
+            if self._gaps:
+                await self._fill_gaps()
+            await self.instrument.mark_fetched(run)
+        except BoardRefused as refused:
+            self.warn(str(refused))
+
+    async def _fill_gaps(self) -> None:
+        """What this program slept through is in the board's own log, coarser."""
+        with self.instrument.finishing():
+            run, log = await self.instrument.board_run(), await self.instrument.log()
+        entries = logged(
+            log.entries,
+            test=self._test_number,
+            started_us=run.started_us,
+            spacing_us=round(log.spacing_s * 1e6),
+            gaps=self._gaps,
+        )
+        self.writer.add_board_log(entries)
+        self.kept_by_board = entries
+        self._gaps.clear()
+        self.warn(
+            f"For a while no readings came. The board kept {sum(entry.missed for entry in entries)} entries meanwhile, "
+            f"one every {log.spacing_s:g} s: that stretch is coarser than the rest."
+        )
 
     async def next_frame(self) -> Sample:
         """The next telemetry frame that ends after the newest command to sink. All go into the record.
@@ -122,6 +189,8 @@ class Bench:
                 load="The load has been told to turn off.",
                 remedy="Look whether something else takes the board's telemetry, then run the plan again.",
             )
+        if self._lone_run and self.last and sample.time_us - self.last.time_us > GAP_us:
+            self._gaps.append((self.last.time_us, sample.time_us))
         self.last = sample
         self.writer.add_samples([sample])
         self._show(sample)
@@ -158,7 +227,7 @@ class Bench:
             raise fault or Stopped(name_of(Fault(sample.fault)), Fault(sample.fault).sentence)
         if self.sinking and sample.state == State.SINKING:
             self._seen_sinking = True
-        elif self._seen_sinking:
+        elif self._seen_sinking and sample.state != State.ENDED:
             raise Stopped(TURNED_OFF, "Somebody else turned the load off: `sinkwright off`, or its button.")
         if self.sinking and sample.limiting == Limiting.DERATED:
             raise Stopped(

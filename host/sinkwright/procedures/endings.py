@@ -9,6 +9,7 @@ from __future__ import annotations
 from enum import IntEnum
 
 from sinkwright.results import END_KEYS
+from sinkwright_wire.vocabulary import RunEnd
 
 INTERRUPTED = "interrupted"
 DERATED = "derated"
@@ -16,6 +17,16 @@ TURNED_OFF = "turned-off"
 LINK_LOST = "link-lost"
 #: Anything else that kept a test from going on; its words are in the notes.
 FAILED = "failed"
+
+
+#: The ends that a board keeps to by itself, by the key that a plan gives them.
+BOARD_ENDS = {
+    RunEnd.VOLTAGE: "end_voltage_V",
+    RunEnd.CHARGE: "end_charge_Ah",
+    RunEnd.ENERGY: "end_energy_Wh",
+    RunEnd.DURATION: "duration_s",
+    RunEnd.TEMPERATURE: "end_temperature_degC",
+}
 
 
 class Stopped(Exception):

@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 from sinkwright.definitions.plan import AnyTest, CurrentLimit, Hold, LoadRegulation
 from sinkwright.procedures import current_limit, hold, load_regulation, rest
 from sinkwright.procedures.procedure import Step
+from sinkwright.procedures.setpoint import SetPoint
 
 if TYPE_CHECKING:
     from sinkwright.definitions.board import BoardFile
@@ -31,6 +32,8 @@ class Expectation:
     charge_Ah: float
     duration_s: float
     heatsink_degC: float | None
+    #: What is held, in words, where it is not simply a current.
+    setpoint: str = ""
 
     def to_json(self) -> dict[str, str | float | None]:
         return {
@@ -44,23 +47,32 @@ class Expectation:
 
     def sentence(self) -> str:
         """For people: what this test draws, heats and takes."""
+        if self.current_A == 0 and self.setpoint:
+            return f"{self.kind}: {self.setpoint}, with a current that depends on the source"
         if self.current_A == 0:
             return f"{self.kind}: the load stays off for {spell_time(self.duration_s)}"
         power = f" ({self.power_W:.1f} W)" if self.power_W is not None else ""
         heat = f", heatsink to about {self.heatsink_degC:.0f} °C" if self.heatsink_degC is not None else ""
         taken = f"{self.charge_Ah:.3f} Ah" if self.charge_Ah >= 0.1 else f"{self.charge_Ah * 1000:.1f} mAh"
         length = f" in about {spell_time(self.duration_s)}" if self.duration_s else ", for an unknown time"
-        return f"{self.kind}: draws up to {self.current_A:.3f} A{power}, {taken}{length}{heat}"
+        held = f"{self.setpoint}, " if self.setpoint else ""
+        return f"{self.kind}: {held}draws up to {self.current_A:.3f} A{power}, {taken}{length}{heat}"
 
 
-def steps_of(test: AnyTest, source: SourceUnderTest) -> list[Step]:
-    """The stretches of a test, in order."""
+def most_current(plan: Plan, board: BoardFile) -> float:
+    """What the limits let flow, in A: a constant voltage may take all of it."""
+    own = plan.limits.current_A
+    return board.limits.current_A if own is None else min(own, board.limits.current_A)
+
+
+def steps_of(test: AnyTest, source: SourceUnderTest, most_A: float) -> list[Step]:
+    """The stretches of a test, in order; `most_A` is what the limits let flow."""
     if isinstance(test, LoadRegulation):
         return load_regulation.steps(test, source)
     if isinstance(test, CurrentLimit):
         return current_limit.steps(test, source)
     if isinstance(test, Hold):
-        return hold.steps(test, source)
+        return hold.steps(test, source, most_A)
     return rest.steps(test)
 
 
@@ -69,7 +81,7 @@ def expect(plan: Plan, board: BoardFile) -> tuple[Expectation, ...]:
     expectations = []
     rise_K = 0.0
     for test in plan.tests:
-        steps = steps_of(test, plan.source)
+        steps = steps_of(test, plan.source, most_current(plan, board))
         voltage_V = plan.source.rated_voltage_V
         largest_A = max(step.current_A for step in steps)
         hottest_K, rise_K = _heat(steps, voltage_V or 0.0, board, rise_K)
@@ -77,20 +89,28 @@ def expect(plan: Plan, board: BoardFile) -> tuple[Expectation, ...]:
             Expectation(
                 kind=test.kind,
                 current_A=largest_A,
-                power_W=None if voltage_V is None else voltage_V * largest_A,
+                power_W=None if voltage_V is None else max(step.power_at(voltage_V) for step in steps),
                 charge_Ah=sum(step.current_A * step.duration_s for step in steps) / 3600,
                 duration_s=sum(step.duration_s for step in steps),
                 heatsink_degC=None if voltage_V is None else AMBIENT_degC + hottest_K,
+                setpoint=_held(test),
             )
         )
     return tuple(expectations)
+
+
+def _held(test: AnyTest) -> str:
+    """What a hold does, where that is more than a current."""
+    if not isinstance(test, Hold) or test.current_A is not None:
+        return ""
+    return SetPoint.of(test).in_words
 
 
 def _heat(steps: list[Step], voltage_V: float, board: BoardFile, rise_K: float) -> tuple[float, float]:
     """The heatsink's highest and last rise over the air: one pole, by the board file's values."""
     hottest_K = rise_K
     for step in steps:
-        final_K = voltage_V * step.current_A * board.heatsink.K_per_W
+        final_K = step.power_at(voltage_V) * board.heatsink.K_per_W
         share = 1 - math.exp(-step.duration_s / board.heatsink.time_constant_s)
         rise_K += (final_K - rise_K) * share
         hottest_K = max(hottest_K, rise_K)

@@ -11,6 +11,7 @@ from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from sinkwright.board_run import not_fetched
 from sinkwright.errors import Interrupted, LinkLost, ProtectionTripped, SinkwrightError
 from sinkwright.instrument import Instrument
 from sinkwright.procedures.bench import Bench, Stop
@@ -53,6 +54,7 @@ async def carry_out(job: Job, progress: Progress, stop: Stop) -> Done:
     preflight(job.plan, job.board)
     instrument = await Instrument.open(job.url, stop=stop)
     async with instrument:
+        await _refuse_unfetched(instrument)
         folder = (job.folder or default_folder()).absolute()
         writer = RecordWriter.create_in(folder, _header(job, instrument))
         run = PlanRun(Bench(instrument, job.plan, job.board, writer, progress, stop))
@@ -65,6 +67,13 @@ async def carry_out(job: Job, progress: Progress, stop: Stop) -> Done:
             raise
     writer.finish(_state_of(result), result)
     return Done(result, writer.path, _report(writer.path, progress))
+
+
+async def _refuse_unfetched(instrument: Instrument) -> None:
+    """A run that went on alone is only on the board until it is fetched: another one would write over it."""
+    run = await instrument.board_run()
+    if not run.fetched:
+        raise not_fetched(instrument.identity.name, run)
 
 
 def _header(job: Job, instrument: Instrument) -> RecordHeader:

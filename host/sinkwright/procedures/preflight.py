@@ -10,10 +10,12 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-from sinkwright.definitions.plan import AnyTest, CurrentLimit, Hold
+from sinkwright.definitions.plan import AnyTest, CurrentLimit, Hold, Rest
 from sinkwright.errors import AskedTooMuch, SinkwrightError
-from sinkwright.procedures.expectation import Expectation, expect, spell_time, steps_of
+from sinkwright.procedures.expectation import Expectation, expect, most_current, spell_time, steps_of
+from sinkwright.procedures.hold import ends_on_board
 from sinkwright.procedures.resolution import hopeless_bounds
+from sinkwright.procedures.setpoint import SetPoint
 
 if TYPE_CHECKING:
     from sinkwright.definitions.board import BoardFile
@@ -58,7 +60,6 @@ def preflight(plan: Plan, board: BoardFile) -> Preflight:
     expectations = expect(plan, board)
     for number, (test, expectation) in enumerate(zip(plan.tests, expectations, strict=True), start=1):
         where = f"plan {plan.name}, test[{number}] ({test.kind})"
-        _check_mode(test, where)
         _check_current(test, expectation, plan, board, where)
         if plan.source.rated_voltage_V is not None:
             check_power(test, plan.source.rated_voltage_V, plan, board, where)
@@ -81,6 +82,7 @@ def check_source(plan: Plan, board: BoardFile, open_V: float, force_V: float) ->
             load="The load is off.",
             remedy='Connect the pair to the source\'s terminals, or write sense = "two-wire" in [source].',
         )
+    _check_not_empty(plan, open_V)
     for number, test in enumerate(plan.tests, start=1):
         check_power(test, open_V, plan, board, f"plan {plan.name}, test[{number}] ({test.kind})")
     rated_V = plan.source.rated_voltage_V
@@ -89,9 +91,27 @@ def check_source(plan: Plan, board: BoardFile, open_V: float, force_V: float) ->
     return []
 
 
+def _check_not_empty(plan: Plan, open_V: float) -> None:
+    """A source that is at its end voltage before anything is drawn would be discharged a second time."""
+    first = plan.tests[0]
+    if isinstance(first, Hold) and first.end_voltage_V is not None and open_V <= first.end_voltage_V:
+        raise SinkwrightError(
+            f"the source gives {open_V:.3f} V with nothing drawn, and the test ends at {first.end_voltage_V:g} V",
+            where=f"plan {plan.name}, test[1] (hold)",
+            load="The load is off.",
+            remedy="An empty cell must be charged first; for another source correct end_voltage_V.",
+        )
+
+
 def draws_nothing(plan: Plan) -> bool:
     """Whether the whole plan leaves the load off."""
-    return all(step.current_A == 0 for test in plan.tests for step in steps_of(test, plan.source))
+    return all(_draws_nothing(test, plan) for test in plan.tests)
+
+
+def _draws_nothing(test: AnyTest, plan: Plan) -> bool:
+    if isinstance(test, Hold):
+        return SetPoint.of(test).value == 0
+    return all(step.current_A == 0 for step in steps_of(test, plan.source, 0.0))
 
 
 def limit_of(key: str, plan: Plan, board: BoardFile) -> tuple[float, str]:
@@ -105,31 +125,47 @@ def limit_of(key: str, plan: Plan, board: BoardFile) -> tuple[float, str]:
 
 def check_power(test: AnyTest, voltage_V: float, plan: Plan, board: BoardFile, where: str) -> None:
     """Refuse a test that would turn more power into heat than fits at `voltage_V`."""
-    current_A = max(step.current_A for step in steps_of(test, plan.source))
+    steps = steps_of(test, plan.source, most_current(plan, board))
+    asked = (
+        SetPoint.of(test)
+        if isinstance(test, Hold)
+        else SetPoint("current_A", max(s.current_A for s in steps))
+    )
+    power_W = max(step.power_at(voltage_V) for step in steps)
+    # A constant voltage takes what it gets: the load itself stays within its power.
     limit_W, whose = limit_of("power_W", plan, board)
-    if current_A * voltage_V > limit_W:
+    if power_W > limit_W and asked.key != "voltage_V":
         raise AskedTooMuch(
-            f"{current_A:.3f} A at {voltage_V:.3f} V are {current_A * voltage_V:.1f} W, more than {whose} of "
-            f"{limit_W:g} W",
+            f"{_asking(asked, voltage_V)} {power_W:.1f} W, more than {whose} of {limit_W:g} W",
             where=where,
-            remedy=f"Ask for at most {_down(limit_W / voltage_V)} A at this voltage.",
+            remedy=asked.within(limit_W, voltage_V),
         )
     rated_W = plan.source.rated_power_W
-    if rated_W is not None and not isinstance(test, CurrentLimit) and current_A * voltage_V > rated_W * 1.001:
+    if rated_W is not None and not isinstance(test, CurrentLimit) and power_W > rated_W * 1.001:
         raise AskedTooMuch(
-            f"{current_A:.3f} A at {voltage_V:.3f} V are more than the source's rated power of {rated_W:g} W",
+            f"{_asking(asked, voltage_V)} {power_W:.1f} W, more than the source's rated power of {rated_W:g} W",
             where=where,
-            remedy=f"Ask for at most {_down(rated_W / voltage_V)} A.",
+            remedy=asked.within(rated_W, voltage_V),
         )
+
+
+def _asking(asked: SetPoint, voltage_V: float) -> str:
+    """How a power comes about: the beginning of a sentence that goes on with it."""
+    unit = asked.key.rpartition("_")[2]
+    return f"{asked.value:.3f} {unit} at {voltage_V:.3f} V are" if unit != "W" else "The plan asks for"
 
 
 def _check_policy(plan: Plan) -> None:
-    if plan.when_host_silent == "continue":
-        raise SinkwrightError(
-            "this firmware has no ends of its own yet, so it cannot go on without a host",
-            where=f"plan {plan.name}, when_host_silent",
-            remedy='Write when_host_silent = "stop", and leave the computer on until the run is through.',
-        )
+    """A board that is to go on alone must be able to keep every end: raises AskedTooMuch for one it cannot."""
+    if plan.when_host_silent != "continue":
+        return
+    for number, test in enumerate(plan.tests, start=1):
+        if isinstance(test, Hold):
+            try:
+                ends_on_board(test, plan.source).to_wire()
+            except AskedTooMuch as error:
+                error.where = f"plan {plan.name}, test[{number}] ({test.kind})"
+                raise
 
 
 def _check_limits(plan: Plan, board: BoardFile) -> None:
@@ -157,22 +193,13 @@ def _check_limits(plan: Plan, board: BoardFile) -> None:
         )
 
 
-def _check_mode(test: AnyTest, where: str) -> None:
-    if isinstance(test, Hold) and test.current_A is None:
-        raise SinkwrightError(
-            "this version holds a constant current only; constant power, resistance and voltage come later",
-            where=where,
-            remedy="Give current_A instead.",
-        )
-
-
 def _check_current(test: AnyTest, expected: Expectation, plan: Plan, board: BoardFile, where: str) -> None:
     limit_A, whose = limit_of("current_A", plan, board)
     if expected.current_A > limit_A:
         raise AskedTooMuch(
             f"{expected.current_A:.3f} A is beyond {whose} of {limit_A:g} A",
             where=where,
-            remedy=f"The largest that fits is {limit_A:g} A.",
+            remedy=_remedy(test, limit_A, plan),
         )
     rated_A = plan.source.rated_current_A
     # Looking for a current limit is the one job that goes beyond the rating by design.
@@ -180,8 +207,15 @@ def _check_current(test: AnyTest, expected: Expectation, plan: Plan, board: Boar
         raise AskedTooMuch(
             f"{expected.current_A:.3f} A is more than the source's rated {rated_A:g} A",
             where=where,
-            remedy=f"Ask for at most {rated_A:g} A, or correct rated_current_A in [source].",
+            remedy=_remedy(test, rated_A, plan) + " Or correct rated_current_A in [source].",
         )
+
+
+def _remedy(test: AnyTest, limit_A: float, plan: Plan) -> str:
+    """What to ask for so that no more than `limit_A` flows."""
+    if not isinstance(test, Hold):
+        return f"The largest that fits is {limit_A:g} A."
+    return SetPoint.of(test).drawing(limit_A, plan.source.rated_voltage_V)
 
 
 def _warnings(plan: Plan, board: BoardFile, expectations: tuple[Expectation, ...]) -> list[str]:
@@ -191,6 +225,7 @@ def _warnings(plan: Plan, board: BoardFile, expectations: tuple[Expectation, ...
             "rated_voltage_V is not stated in [source], so power and heat cannot be told before the source "
             "is seen."
         )
+    found += _bound_to_host(plan)
     limit_degC, _ = limit_of("heatsink_degC", plan, board)
     for number, expected in enumerate(expectations, start=1):
         if expected.current_A and (expected.heatsink_degC or 0.0) > limit_degC:
@@ -202,6 +237,21 @@ def _warnings(plan: Plan, board: BoardFile, expectations: tuple[Expectation, ...
                 "through."
             )
     return found + hopeless_bounds(plan, board)
+
+
+def _bound_to_host(plan: Plan) -> list[str]:
+    """Which tests of a plan that is to go on alone cannot, because their steps are this program's."""
+    if plan.when_host_silent != "continue":
+        return []
+    bound = [f"{n} ({t.kind})" for n, t in enumerate(plan.tests, start=1) if not isinstance(t, Hold | Rest)]
+    found = (
+        [f"Test {', '.join(bound)} needs this program for each step: without it the board stops."]
+        if bound
+        else []
+    )
+    if len(plan.tests) > 1:
+        found.append("Without this program the board ends the test that goes on, and begins none after it.")
+    return found
 
 
 def _down(value: float) -> str:

@@ -18,6 +18,7 @@ from sinkwright.uncertainty.verdict import judge
 if TYPE_CHECKING:
     from sinkwright.definitions.plan import SourceUnderTest
     from sinkwright.procedures.bench import Bench
+    from sinkwright.procedures.setpoint import SetPoint
 
 
 NOT_REACHED = "The test ended before this was measured."
@@ -33,6 +34,14 @@ class Step:
 
     current_A: float
     duration_s: float
+    #: What is held, where it is not this current.
+    setpoint: SetPoint | None = None
+
+    def power_at(self, voltage_V: float) -> float:
+        """What it turns into heat at a source's voltage, in W."""
+        if self.setpoint is None:
+            return voltage_V * self.current_A
+        return self.setpoint.power_at(voltage_V, self.current_A)
 
 
 @dataclass(frozen=True)

@@ -47,8 +47,9 @@ def _expected(name: str, bounds: Bounds, test: AnyTest, plan: Plan, model: Parts
     rated_V = plan.source.rated_voltage_V
     if isinstance(test, LoadRegulation) and rated_V is not None:
         return _regulation(name, middle, rated_V, full_load_A(test, plan.source), model)
-    if name == "power_W" and rated_V is not None and isinstance(test, Hold) and test.current_A:
-        return _voltage(model, middle / test.current_A) * _current(model, test.current_A)
+    if name == "power_W" and rated_V is not None and isinstance(test, Hold):
+        current_A = test.current_A or middle / rated_V
+        return _voltage(model, middle / current_A) * _current(model, current_A) if current_A else None
     return None
 
 

@@ -113,7 +113,7 @@ class PlanRun:
             result, failure = await _carry_out(bench, test)
             ends_here = failure is not None or not is_planned(result.stopped_by)
             if ends_here:
-                result = _naming_left_out(result, tests[number:])
+                result = naming_left_out(result, tests[number:])
             self._results.append(result)
             bench.writer.add_result(result)
             bench.progress.tell(TestEnds(number, result))
@@ -181,6 +181,7 @@ async def _follow_instruction(bench: Bench, instruction: str) -> None:
     await look_at_source(bench)
 
 
-def _naming_left_out(result: TestResult, left: tuple[AnyTest, ...]) -> TestResult:
+def naming_left_out(result: TestResult, left: tuple[AnyTest, ...]) -> TestResult:
+    """The last result of a run that stopped, telling which tests were `left` out."""
     named = tuple(f"{test.kind}: not carried out, because the run stopped before it." for test in left)
     return replace(result, not_tested=(*result.not_tested, *named))

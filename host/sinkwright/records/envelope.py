@@ -2,11 +2,12 @@
 SQLite.
 
 Each sample carries the extremes of its own readings, so an envelope keeps even what a frame's mean hides.
-Values come out in SI units. It knows one table and no file.
+A stretch that only the board kept joins them, coarser. Values come out in SI units. It knows no file.
 """
 
 from __future__ import annotations
 
+import math
 import sqlite3
 from dataclasses import dataclass
 from typing import NamedTuple
@@ -33,6 +34,15 @@ class Bin(NamedTuple):
     charge_C: float
 
 
+#: The samples, and after them what only the board kept; its log has no junction, and means of the current only.
+_WITH_BOARD_LOG = """(
+  SELECT row, time_us, voltage_uV, voltage_min_uV, voltage_max_uV, current_uA, current_min_uA, current_max_uA,
+    heatsink_mC, junction_mC, charge_uC FROM sample
+  UNION ALL
+  SELECT NULL, time_us, voltage_uV, voltage_min_uV, voltage_max_uV, current_uA, current_uA, current_uA,
+    heatsink_mC, NULL, charge_uC FROM board_log WHERE missed
+)"""
+
 _ENVELOPE = """
 SELECT min(time_us), max(time_us), count(*),
   min(voltage_min_uV) * 1e-6, avg(voltage_uV) * 1e-6, max(voltage_max_uV) * 1e-6,
@@ -40,17 +50,27 @@ SELECT min(time_us), max(time_us), count(*),
   min(heatsink_mC) * 1e-3, avg(heatsink_mC) * 1e-3, max(heatsink_mC) * 1e-3,
   min(junction_mC) * 1e-3, avg(junction_mC) * 1e-3, max(junction_mC) * 1e-3,
   max(charge_uC) * 1e-6
-FROM sample GROUP BY (time_us - :first) / :width ORDER BY 1
+FROM {readings} GROUP BY (time_us - :first) / :width ORDER BY 1
 """
 
 
 def envelope_of(connection: sqlite3.Connection, bins: int) -> list[Bin]:
     """At most `bins` bins of equal width in time; stretches without samples give none."""
-    first, last = connection.execute("SELECT min(time_us), max(time_us) FROM sample").fetchone()
+    readings = _readings(connection)
+    first, last = connection.execute(f"SELECT min(time_us), max(time_us) FROM {readings}").fetchone()
     if first is None:
         return []
     width = (last - first) // bins + 1
-    return [Bin(*row) for row in connection.execute(_ENVELOPE, {"first": first, "width": width})]
+    rows = connection.execute(_ENVELOPE.format(readings=readings), {"first": first, "width": width})
+    return [Bin._make(math.nan if value is None else value for value in row) for row in rows]
+
+
+def _readings(connection: sqlite3.Connection) -> str:
+    """What to read from: the samples, with the board's own log where it tells more."""
+    (there,) = connection.execute("SELECT count(*) FROM sqlite_master WHERE name = 'board_log'").fetchone()
+    if there and connection.execute("SELECT 1 FROM board_log WHERE missed LIMIT 1").fetchone():
+        return _WITH_BOARD_LOG
+    return "sample"
 
 
 class Extreme(NamedTuple):
@@ -81,12 +101,14 @@ class Extremes:
 def extremes_of(connection: sqlite3.Connection) -> Extremes | None:
     """Count, gaps and extremes of the sample table; None when it is empty."""
     totals = connection.execute(
-        "SELECT count(*), min(time_us), max(time_us), max(number) - min(number) + 1 - count(*),"
+        "SELECT count(*), min(time_us), max(number) - min(number) + 1 - count(*),"
         " max(overruns), max(dropped) FROM sample"
     ).fetchone()
     if not totals[0]:
         return None
-    count, first_us, last_us, missing, overruns, dropped = totals
+    count, first_us, missing, overruns, dropped = totals
+    readings = _readings(connection)
+    (last_us,) = connection.execute(f"SELECT max(time_us) FROM {readings}").fetchone()
     (heatsink_mC,) = connection.execute("SELECT heatsink_mC FROM sample ORDER BY row LIMIT 1").fetchone()
     return Extremes(
         count=count,
@@ -95,16 +117,16 @@ def extremes_of(connection: sqlite3.Connection) -> Extremes | None:
         missing=max(missing, 0),
         overruns=overruns,
         dropped=dropped,
-        voltage_min_V=_extreme(connection, "min(voltage_min_uV)", 1e6),
-        voltage_max_V=_extreme(connection, "max(voltage_max_uV)", 1e6),
-        current_max_A=_extreme(connection, "max(current_max_uA)", 1e6),
+        voltage_min_V=_extreme(connection, readings, "min(voltage_min_uV)", 1e6),
+        voltage_max_V=_extreme(connection, readings, "max(voltage_max_uV)", 1e6),
+        current_max_A=_extreme(connection, readings, "max(current_max_uA)", 1e6),
         heatsink_first_degC=heatsink_mC / 1e3,
-        heatsink_max_degC=_extreme(connection, "max(heatsink_mC)", 1e3),
-        junction_max_degC=_extreme(connection, "max(junction_mC)", 1e3),
+        heatsink_max_degC=_extreme(connection, readings, "max(heatsink_mC)", 1e3),
+        junction_max_degC=_extreme(connection, readings, "max(junction_mC)", 1e3),
     )
 
 
-def _extreme(connection: sqlite3.Connection, extreme: str, parts: float) -> Extreme:
+def _extreme(connection: sqlite3.Connection, readings: str, extreme: str, parts: float) -> Extreme:
     # SQLite takes the other columns from the row that holds the extreme (lang_select, "bare columns").
-    value, time_us = connection.execute(f"SELECT {extreme}, time_us FROM sample").fetchone()
+    value, time_us = connection.execute(f"SELECT {extreme}, time_us FROM {readings}").fetchone()
     return Extreme(value / parts, time_us)

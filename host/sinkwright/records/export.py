@@ -135,6 +135,28 @@ def _rows(record: Record) -> Iterator[tuple[Any, ...]]:
             item,
             simulated,
         )
+    yield from _logged_rows(record)
+
+
+def _logged_rows(record: Record) -> Iterator[tuple[Any, ...]]:
+    """The stretch that only the board kept: rows without a number, and empty where its log has nothing."""
+    item, simulated = guarded(record.header.item), record.header.simulated
+    for entry in record.board_log():
+        if not entry.missed:
+            continue
+        known = entry._asdict()
+        yield (
+            record.utc_of(entry.time_us),
+            entry.time_us / 1e6,
+            None,
+            entry.test,
+            "sinking",
+            *(None,) * 5,
+            *(known[c.field] / c.parts if c.field in known else None for c in _NUMBERS),
+            *(None,) * len(_COUNTS),
+            item,
+            simulated,
+        )
 
 
 def _csv_row(row: tuple[Any, ...]) -> list[Any]:

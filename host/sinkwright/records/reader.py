@@ -16,10 +16,18 @@ from pathlib import Path
 from typing import Any, Self
 
 from sinkwright.errors import RecordError
+from sinkwright.records.board_log import (
+    BOARD_RUN,
+    BoardRunName,
+    FOREVER_us,
+    GAP_us,
+    LoggedEntry,
+    run_named_in,
+)
 from sinkwright.records.checks import checked
 from sinkwright.records.envelope import Bin, Extremes, envelope_of, extremes_of
 from sinkwright.records.header import RecordHeader
-from sinkwright.records.schema import APPLICATION_ID, SCHEMA_VERSION, STATES
+from sinkwright.records.schema import APPLICATION_ID, READABLE_VERSIONS, SCHEMA_VERSION, STATES
 from sinkwright.results import RunResult, TestResult, Verdict, overall
 from sinkwright.sample import FIELD_NAMES, Sample
 
@@ -27,6 +35,10 @@ _CHUNK_ROWS = 20_000
 _MAGIC = b"SQLite format 3\x00"
 _ASK_FOR_ANOTHER = "Name a file that a run of this program wrote; `sinkwright records` lists them."
 _COLUMNS = ", ".join(FIELD_NAMES)
+_GAPS = (
+    "SELECT before, time_us FROM (SELECT time_us, lag(time_us) OVER (ORDER BY row) AS before FROM sample)"
+    " WHERE time_us - before > ?"
+)
 
 #: What SQLite raises on a damaged file; the last when its own message quotes bytes that are no text.
 _UNREADABLE = (sqlite3.Error, UnicodeDecodeError)
@@ -121,6 +133,26 @@ class Record:
             "event", lambda: [RecordedEvent(*row[:4], data=json.loads(row[4])) for row in rows]
         )
 
+    def board_runs(self) -> list[BoardRunName]:
+        """The runs on the board that this record is of, in their order."""
+        rows = self._query(f"SELECT data FROM event WHERE kind = '{BOARD_RUN}' ORDER BY row")
+        return self._understand("event", lambda: [run_named_in(json.loads(row[0])) for row in rows])
+
+    def board_log(self) -> list[LoggedEntry]:
+        """What the board itself kept of a stretch without this program; empty for most records."""
+        if self.version < 2:
+            return []
+        rows = self._query(f"SELECT {', '.join(LoggedEntry._fields)} FROM board_log ORDER BY time_us")
+        if any(type(value) is not int for row in rows for value in row):
+            raise self._damaged("table board_log is not made of integers")
+        return [LoggedEntry(*row) for row in rows]
+
+    def gaps(self) -> list[tuple[int, int]]:
+        """Stretches without samples, from the last one before to the first one after; the last has no end."""
+        rows = self._query(_GAPS, GAP_us)
+        last = self._query("SELECT max(time_us) FROM sample")[0][0]
+        return [(first, then) for first, then in rows] + [(last or 0, FOREVER_us)]
+
     def results(self) -> list[TestResult]:
         """Results of the tests that were carried out, in the plan's order."""
         rows = self._query("SELECT json FROM result ORDER BY test")
@@ -161,7 +193,8 @@ class Record:
                 "is a database of another program", where=str(self.path), remedy=_ASK_FOR_ANOTHER
             )
         version = self._query("PRAGMA user_version")[0][0]
-        if version != SCHEMA_VERSION:
+        self.version = int(version)
+        if version not in READABLE_VERSIONS:
             raise RecordError(
                 f"has record version {version}, and this program reads version {SCHEMA_VERSION}",
                 where=str(self.path),

@@ -10,7 +10,9 @@ from dataclasses import dataclass
 
 from sinkwright.sample import FIELD_NAMES
 
-SCHEMA_VERSION = 1
+#: Version 2 added `board_log`.
+SCHEMA_VERSION = 2
+READABLE_VERSIONS = (1, 2)
 
 #: SQLite's application_id of our records: "Sink" in ASCII. Another program's database has another number, or
 #: 0.
@@ -76,7 +78,8 @@ _SAMPLE_MEANINGS = {
     "time_us": "The board's clock, microseconds.",
     "state": "0 off, 1 sinking, 2 ended, 3 fault.",
     "mode": "0 none, 1 constant current, 2 power, 3 resistance, 4 voltage.",
-    "limiting": "0 nothing, 1 the source, 2 a ramp, 3 derated by temperature, 4 no source, 5 saturated.",
+    "limiting": "0 nothing, 1 the source, 2 a ramp, 3 derated by temperature, 4 no source, 5 saturated, "
+    "6 unreachable, 7 unresolved, 8 unsettled.",
     "fault": "Code of the latched fault, 0 for none (protocol reference, Fault).",
     "setpoint": "Set-point in the mode's own unit: uA, uW, milliohm, uV.",
     "voltage_uV": "Mean voltage over the frame, microvolt.",
@@ -151,6 +154,30 @@ TABLES = (
     ),
 )
 
+BOARD_LOG = Table(
+    "board_log",
+    "A run's log as the board itself kept it, fetched by `sinkwright resume` after the run went on or ended "
+    "without this program. Coarser than the samples; empty in most records. New in version 2.",
+    (
+        Column("time_us", "INTEGER PRIMARY KEY", "The board's clock, microseconds, at the end of the entry."),
+        Column("test", "INTEGER NOT NULL", "Test of the plan, from 1."),
+        Column(
+            "missed", "INTEGER NOT NULL", "1 where the record has no sample of that time any more, else 0."
+        ),
+        Column("spacing_us", "INTEGER NOT NULL", "Time between entries, microseconds."),
+        Column("voltage_uV", "INTEGER NOT NULL", "Mean voltage over the entry, microvolt."),
+        Column(
+            "voltage_min_uV", "INTEGER NOT NULL", "Lowest single reading of the voltage within the entry."
+        ),
+        Column("voltage_max_uV", "INTEGER NOT NULL", "Highest single reading."),
+        Column("current_uA", "INTEGER NOT NULL", "Mean current over the entry, microampere."),
+        Column("heatsink_mC", "INTEGER NOT NULL", "Heatsink, thousandths of a degree Celsius."),
+        Column("charge_uC", "INTEGER NOT NULL", "Charge since the start of the run, microcoulomb."),
+    ),
+)
+TABLES = (*TABLES, BOARD_LOG)
+
+INSERT_LOGGED = "INSERT OR REPLACE INTO board_log VALUES ({})".format(", ".join("?" * len(BOARD_LOG.columns)))
 INSERT_SAMPLE = "INSERT INTO sample (test, {}) VALUES ({})".format(
     ", ".join(FIELD_NAMES), ", ".join("?" * (1 + len(FIELD_NAMES)))
 )

@@ -11,18 +11,20 @@ import contextlib
 import json
 import sqlite3
 import time
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from datetime import UTC, datetime
 from operator import attrgetter
 from pathlib import Path
 from typing import Any, Self
 
 from sinkwright.errors import RecordError
+from sinkwright.records.board_log import LoggedEntry
 from sinkwright.records.header import Anchor, RecordHeader, anchor_rows, iso_utc, utc_now
 from sinkwright.records.naming import cannot_write, reserve_path
 from sinkwright.records.schema import (
     APPLICATION_ID,
     INSERT_EVENT,
+    INSERT_LOGGED,
     INSERT_SAMPLE,
     SCHEMA_VERSION,
     STATES,
@@ -124,6 +126,10 @@ class RecordWriter:
         utc = utc_now() if self._anchor is None else iso_utc(self._anchor.utc_of(time_us))
         row = (time_us, utc, kind, text, json.dumps(dict(data or {}), default=str))
         self.commit((INSERT_EVENT, row))
+
+    def add_board_log(self, entries: Sequence[LoggedEntry]) -> None:
+        """Keep what the board itself kept of a stretch without samples, committed when this returns."""
+        self.commit(*((INSERT_LOGGED, tuple(entry)) for entry in entries))
 
     def add_result(self, result: TestResult) -> None:
         """Keep the result of the next test in the plan's order, committed when this returns."""

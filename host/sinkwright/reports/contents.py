@@ -158,6 +158,7 @@ class Contents:
         tests = tuple(TestView.of(number, result) for number, result in enumerate(results, start=1))
         extremes = record.extremes()
         bins = record.envelope(figures.BINS)
+        coarse = _kept_by_board(record)
         return cls(
             title=header.item or plan.source.get("name") or header.plan_name,
             simulated=header.simulated,
@@ -169,8 +170,8 @@ class Contents:
             facts=_facts(record, plan, extremes),
             tests=tests,
             not_tested=_not_tested(tests, plan),
-            curves=_curves(bins, results),
-            readings=_readings(extremes),
+            curves=_curves(bins, results, coarse),
+            readings=_readings(extremes) + _coarse_in_words(record, coarse),
             events=tuple((_clock(record, event), event) for event in events[:EVENTS_SHOWN]),
             events_left_out=max(len(events) - EVENTS_SHOWN, 0),
             board=_board(record),
@@ -218,11 +219,38 @@ def _curve(number: int, result: TestResult) -> str:
     return figures.characteristic([figures.Trace("", points)], f"Voltage over current, test {number}")
 
 
-def _curves(bins: list[Bin], results: list[TestResult]) -> tuple[str, ...]:
+def _kept_by_board(record: Record) -> list[figures.Coarse]:
+    """The stretches of which there is only the board's own log."""
+    found: list[figures.Coarse] = []
+    for entry in record.board_log():
+        if not entry.missed:
+            continue
+        begin_us = entry.time_us - entry.spacing_us
+        # The time between entries is kept to within a few control steps.
+        if found and begin_us - found[-1].last_us < entry.spacing_us // 2:
+            begin_us = found.pop().first_us
+        found.append(figures.Coarse(begin_us, entry.time_us, entry.spacing_us))
+    return found
+
+
+def _coarse_in_words(record: Record, coarse: list[figures.Coarse]) -> tuple[tuple[str, str], ...]:
+    return tuple(("Kept by the board alone", _stretch_in_words(record, stretch)) for stretch in coarse)
+
+
+def _stretch_in_words(record: Record, stretch: figures.Coarse) -> str:
+    first, last = record.utc_of(stretch.first_us), record.utc_of(stretch.last_us)
+    times = f" from {first:%H:%M:%S} to {last:%H:%M:%S} UTC" if first and last else ""
+    return (
+        f"{length_in_words((stretch.last_us - stretch.first_us) / 1e6)}{times}, one entry every "
+        f"{stretch.spacing_us / 1e6:g} s; each has the voltage's extremes, and only the mean of the current"
+    )
+
+
+def _curves(bins: list[Bin], results: list[TestResult], coarse: list[figures.Coarse]) -> tuple[str, ...]:
     if not bins:
         return ()
     spans = [figures.Span(str(n), r.started_us, r.ended_us) for n, r in enumerate(results, start=1)]
-    return figures.voltage_and_current(bins, spans), figures.temperatures(bins, spans)
+    return figures.voltage_and_current(bins, spans, coarse), figures.temperatures(bins, spans, coarse)
 
 
 def _facts(record: Record, plan: PlanFacts, extremes: Extremes | None) -> tuple[tuple[str, str], ...]:

@@ -52,6 +52,15 @@ class Span:
 
 
 @dataclass(frozen=True)
+class Coarse:
+    """The stretch that only the board kept, one entry every `spacing_us`."""
+
+    first_us: int
+    last_us: int
+    spacing_us: int
+
+
+@dataclass(frozen=True)
 class Trace:
     """One curve of points; `label` empty leaves the legend out."""
 
@@ -59,31 +68,35 @@ class Trace:
     points: Sequence[Mapping[str, float]]
 
 
-def voltage_and_current(bins: Sequence[Bin], spans: Sequence[Span]) -> str:
+def voltage_and_current(bins: Sequence[Bin], spans: Sequence[Span], coarse: Sequence[Coarse] = ()) -> str:
     """Voltage above current over time, one time axis."""
     with _styled():
         figure = _figure(3.9)
         above, below = figure.subplots(2, 1, sharex=True)
         unit = _time_unit(bins)
-        _band(above, bins, unit, "voltage", "V", _VOLTAGE)
-        _band(below, bins, unit, "current", "A", _CURRENT)
+        _band(above, bins, unit, "voltage", "V", _VOLTAGE, coarse=coarse)
+        _band(below, bins, unit, "current", "A", _CURRENT, coarse=coarse)
         above.set_ylabel("Voltage / V")
         below.set_ylabel("Current / A")
         above.margins(x=0.01)
         _time_axis(below, unit)
         _mark(above, spans, bins, unit, labelled=True)
         _mark(below, spans, bins, unit, labelled=False)
+        for stretch in coarse:
+            _mark_coarse(above, bins, unit, stretch)
         return _svg(figure, "Voltage and current over time")
 
 
-def temperatures(bins: Sequence[Bin], spans: Sequence[Span]) -> str:
+def temperatures(bins: Sequence[Bin], spans: Sequence[Span], coarse: Sequence[Coarse] = ()) -> str:
     """Heatsink, and the junction as estimated, over time."""
     with _styled():
         figure = _figure(2.3)
         axes = figure.subplots()
         unit = _time_unit(bins)
-        _band(axes, bins, unit, "junction", "degC", _JUNCTION, "transistor junction (estimated)", "--")
-        _band(axes, bins, unit, "heatsink", "degC", _HEATSINK, "heatsink")
+        _band(
+            axes, bins, unit, "junction", "degC", _JUNCTION, "transistor junction (estimated)", "--", coarse
+        )
+        _band(axes, bins, unit, "heatsink", "degC", _HEATSINK, "heatsink", coarse=coarse)
         axes.set_ylabel("Temperature / °C")
         axes.legend(frameon=False, loc="best", fontsize=8)
         _time_axis(axes, unit)
@@ -125,7 +138,7 @@ def voltage_over_charge(runs: Sequence[tuple[str, Sequence[Bin]]]) -> str:
 
 def _band(
     axes: Any, bins: Sequence[Bin], unit: tuple[float, str], reading: str, si: str, color: str,
-    label: str = "", line: str = "-",
+    label: str = "", line: str = "-", coarse: Sequence[Coarse] = (),
 ) -> None:  # fmt: skip
     """The mean as a line, and each bin's lowest to highest reading as a vertical stroke in its middle."""
     start_us, scale = bins[0].first_us, unit[0] * 1e6
@@ -136,16 +149,16 @@ def _band(
     across = [x for time in times for x in (time, time, math.nan)]
     along = [y for ends in zip(low, high, strict=True) for y in (*ends, math.nan)]
     axes.plot(across, along, lw=0.7, color=color, alpha=0.55, gid=f"extremes-{reading}")
-    for part in stretches(bins):
+    for part in stretches(bins, max((stretch.spacing_us for stretch in coarse), default=0)):
         mean = [getattr(b, f"{reading}_{si}") for b in bins[part]]
         axes.plot(times[part], mean, line, lw=1.1, color=color, label=label)
         label = ""
 
 
-def stretches(bins: Sequence[Bin]) -> list[slice]:
-    """The bins cut where no sample came for unusually long."""
+def stretches(bins: Sequence[Bin], spacing_us: int = 0) -> list[slice]:
+    """The bins cut where no sample came for unusually long, and longer than `spacing_us` explains."""
     spacing = sorted(later.first_us - earlier.first_us for earlier, later in pairwise(bins))
-    usual = spacing[len(spacing) // 2] if spacing else 0
+    usual = max(spacing[len(spacing) // 2] if spacing else 0, spacing_us)
     pauses = [later.first_us - earlier.last_us for earlier, later in pairwise(bins)]
     cuts = [place for place, pause in enumerate(pauses, start=1) if pause > _GAP_SPACINGS * usual]
     return [slice(first, last) for first, last in pairwise([0, *cuts, len(bins)])]
@@ -178,6 +191,16 @@ def _mark(
         if labelled:
             place = {"transform": axes.get_xaxis_transform(), "ha": "center", "va": "bottom"}
             axes.text((first + last) / 2, 1.02, span.label, fontsize=8, color="#444444", **place)
+
+
+def _mark_coarse(axes: Any, bins: Sequence[Bin], unit: tuple[float, str], coarse: Coarse) -> None:
+    """Hatch the stretch that only the board kept, and say so at its foot."""
+    start_us, scale = bins[0].first_us, unit[0] * 1e6
+    first, last = (coarse.first_us - start_us) / scale, (coarse.last_us - start_us) / scale
+    axes.axvspan(first, last, facecolor="none", edgecolor="#d0cec4", hatch="//", zorder=0, lw=0)
+    words = f"kept by the board, every {coarse.spacing_us / 1e6:g} s"
+    place = {"transform": axes.get_xaxis_transform(), "ha": "center", "va": "bottom"}
+    axes.text((first + last) / 2, 0.02, words, fontsize=8, color="#444444", **place)
 
 
 def _styled() -> Any:

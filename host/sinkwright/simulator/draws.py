@@ -44,12 +44,19 @@ def draw_plant(board: BoardFile, seed: int) -> dict[str, Any]:
     return {
         "dac": {
             "part": board.dac.part,
+            "pin": board.dac.pin,
             "address": board.dac.address,
             "reference_V": reference_V,
             "eeprom_code": 0,
             "inl": _nonlinearity(part, board),
         },
         "adc": _adc(part, board),
+        "monitor": board.monitor
+        and {
+            "address": board.monitor.address,
+            "pin": board.monitor.alert_pin,
+            "shunt_ohm": board.monitor.shunt_ohm,
+        },
         "current": _current(part, board),
         "voltage": _divider(part, "voltage", board.voltage_sense, board),
         "force": _divider(part, "force", board.force_sense, board),
@@ -75,11 +82,6 @@ def draw_plant(board: BoardFile, seed: int) -> dict[str, Any]:
 def draw_board_id(seed: int) -> bytes:
     """The eight bytes by which the board number `seed` is known."""
     return Random(f"{seed}/board id").randbytes(8)
-
-
-def draw_boot_number(seed: int) -> int:
-    """The boot number of a board that remembers nothing: the same at each start, so that bytes repeat."""
-    return Random(f"{seed}/boot number").randrange(1, 1 << 32)
 
 
 def source_keys(source: SourceFile) -> dict[str, Any]:

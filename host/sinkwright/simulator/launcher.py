@@ -12,14 +12,16 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
+import msgspec
+
 from sinkwright.board_image import compile_board
 from sinkwright.definitions.board import BoardFile
 from sinkwright.definitions.source import SourceFile
 from sinkwright.firmware_files import find_firmware
 from sinkwright.simulator.child import MAX_BYTES, Child
-from sinkwright.simulator.draws import draw_board_id, draw_boot_number, draw_plant, source_keys
+from sinkwright.simulator.draws import draw_board_id, draw_plant, source_keys
 from sinkwright.simulator.interpreter import Interpreter, find_interpreter
-from sinkwright.simulator.memory import remember_boot
+from sinkwright.simulator.memory import take_out
 
 _START = Path(__file__).resolve().parent / "board_side" / "start.py"
 _POWER_ON = 1
@@ -60,7 +62,7 @@ class SimulatedBoard:
             "firmware": str(firmware or find_firmware()),
             "image": compile_board(board),
             "seed": seed,
-            "boot_number": draw_boot_number(seed) if store is None else remember_boot(store, seed),
+            "memory": None if store is None else _memory(store, seed),
             "board_id": draw_board_id(seed).hex(),
             "reset_cause": _POWER_ON,
             "source": source_keys(source),
@@ -85,3 +87,8 @@ class SimulatedBoard:
     def close(self) -> None:
         """Power down. May be called twice; never raises."""
         self._child.close()
+
+
+def _memory(store: Path, seed: int) -> dict[str, Any]:
+    """What the board remembers, and the file where it keeps it from now on."""
+    return {"path": str(store.absolute()), **msgspec.to_builtins(take_out(store, seed))}

@@ -37,6 +37,7 @@ def test_counts_are_two_s_complement() -> None:
         DRIVER
         + """
     adc.begin(0)
+    board.clock.now += 2350
     found = []
     for counts in (0, 1, 32767, -1, -32768):
         bus.counts[0] = counts
@@ -52,6 +53,7 @@ def test_a_part_still_converting_and_a_part_that_was_reset_are_told_apart() -> N
         DRIVER
         + """
     adc.begin(2)
+    board.clock.now += 2350
     bus.ready = False
     busy = adc.finish() == adc_ads1115.NOT_READY
     bus.ready = True
@@ -61,3 +63,20 @@ def test_a_part_still_converting_and_a_part_that_was_reset_are_told_apart() -> N
 """
     )
     assert found == [True, True, 0x8583]
+
+
+def test_whether_a_conversion_is_under_way_is_told_by_the_ready_flag() -> None:
+    """OS reads 0 while it converts. A part that began nothing reads 1 at once, with its register as written."""
+    found = on_board(
+        DRIVER
+        + """
+    adc.begin(1)
+    found = [adc.under_way()]
+    board.clock.now += 2350
+    found += [adc.under_way(), adc.finish() >= -32768]
+    bus.starting = False
+    adc.begin(1)
+    found += [adc.under_way(), adc.config_seen]
+"""
+    )
+    assert found == [True, False, True, False, 0b1_101_001_1_111_00011]

@@ -35,9 +35,14 @@ class Clock:
 
 
 class Bus:
-    def __init__(self):
+    def __init__(self, clock):
+        self._clock = clock
+        self._begun_at = -1
+        #: Whether a conversion that is begun is under way until time passes.
+        self.starting = True
         self.counts = [0, 0, 0, 0]
         self.code = -1
+        self.memory = 0
         self.follow = False
         self.silent = 0
         self.converting = True
@@ -50,19 +55,32 @@ class Bus:
         if self.converting:
             self._config_high = data[0]
         self._config_low = data[1]
+        if self.starting:
+            self._begun_at = self._clock.now
 
     def readfrom_mem_into(self, address, register, buffer):
         self._answer(address, ADC)
         if register == 1:
-            buffer[0] = self._config_high if self.ready else self._config_high & 0x7F
+            ready = self.ready and self._clock.now != self._begun_at
+            buffer[0] = self._config_high if ready else self._config_high & 0x7F
             buffer[1] = self._config_low
         else:
             counts = self.counts[self._config_high >> 4 & 3] & 0xFFFF
             buffer[0] = counts >> 8
             buffer[1] = counts & 0xFF
 
+    def readfrom_into(self, address, buffer):
+        """The DAC's five octets: ready, its output, its power-up memory."""
+        self._answer(address, DAC)
+        code = max(self.code, 0)
+        for at, octet in enumerate((0xC0, code >> 4, code << 4 & 0xF0, self.memory >> 8, self.memory & 0xFF)):
+            buffer[at] = octet
+
     def writeto(self, address, data):
         self._answer(address, DAC)
+        if len(data) == 3:
+            self.code = self.memory = data[1] << 4 | data[2] >> 4
+            return
         self.code = data[0] << 8 | data[1]
         if self.follow:
             self.counts[0] = 800 + max(self.code - 124, 0) * 12890 // 2000
@@ -84,8 +102,61 @@ class Gate:
 
 
 class Led:
-    def show(self, state):
+    def show(self, state, lit=True):
         self.state = state
+        self.lit = lit
+
+
+class Slots:
+    """The store's medium; a write is cut off after `cut` octets, as when the power goes, and then raises."""
+
+    def __init__(self):
+        self.slots = [b"", b""]
+        self.writes = 0
+        self.cut = None
+
+    def read(self, slot):
+        return self.slots[slot]
+
+    def write(self, slot, data):
+        self.writes += 1
+        if self.cut is None:
+            self.slots[slot] = bytes(data)
+            return
+        # What the old write held beyond the cut is still there, as in a file that is written in place.
+        self.slots[slot] = bytes(data[: self.cut]) + self.slots[slot][self.cut :]
+        raise PowerLost
+
+
+class PowerLost(Exception):
+    """No firmware could notice this."""
+
+
+class Watchdog:
+    def __init__(self):
+        self.started = False
+        self.fed = 0
+
+    def start(self):
+        self.started = True
+
+    def feed(self):
+        self.fed += 1
+
+
+class Trigger:
+    """Keeps [board time, level] of every change."""
+
+    def __init__(self, clock):
+        self._clock = clock
+        self.level = 0
+        self.edges = []
+
+    def set(self, level):
+        level = 1 if level else 0
+        if level != self.level:
+            self.level = level
+            self.edges.append([self._clock.now, level])
 
 
 class Stream:
@@ -154,6 +225,21 @@ IMAGE = {
     "zero_budget_uA": 50_000,
     "off_current_uA": 60_000,
     "demand_margin_uA": 150_000,
+    "hard_counts": {"current": 23_200, "voltage": 22_900, "force": 23_400, "heatsink": 3_333},
+    "calibration": {
+        "current": {"gain_ppm": 16_000, "zero_counts": 65},
+        "voltage": {"gain_ppm": 6_000, "zero_counts": 60},
+        "force": {"gain_ppm": 24_000, "zero_counts": 85},
+    },
+    "sense": {"fixed_uV": 240_000, "share_x1024": 26, "lead_mohm": 500, "short_mohm": 650},
+    "cooling": {
+        "most": {"r_mK_per_W": 1339, "warm": [6925, 8], "cool": [4098, 8]},
+        "still": {"r_mK_per_W": 6695, "warm": [5543, 10], "cool": [6560, 11]},
+        "least": {"r_mK_per_W": 747, "warm": [7346, 8], "cool": [6208, 7]},
+        "drift_uK": 431,
+        "allowance_mK": 6_000,
+        "coldest_mC": 5_000,
+    },
 }
 
 
@@ -168,11 +254,27 @@ class Board:
         self.image = dict(IMAGE)
         self.image.update(changes)
         self.clock = Clock()
-        self.bus = Bus()
+        self.bus = Bus(self.clock)
         self.gate = Gate()
         self.led = Led()
+        self.trigger = Trigger(self.clock)
         self.stream = Stream()
+        self.store = Slots()
+        self.watchdog = Watchdog()
+        self.maintenance = False
+        self.pressed = False
+        self.fan_on = None
+        self.restarts = []
         self.show(0, 12_000_000, 25_000)
+
+    def button(self):
+        return self.pressed
+
+    def fan(self, on):
+        self.fan_on = on
+
+    def restart(self, maintenance, cause):
+        self.restarts.append([bool(maintenance), cause])
 
     def show(self, current_uA, voltage_uV, heatsink_mC=None):
         """Make the converter find these; a current of None is whatever the DAC asks for, as with a good source."""
@@ -189,11 +291,13 @@ class Board:
 class Session:
     """A firmware on a stand-in board, spoken to without a wire: what `dispatch` does with a frame's content."""
 
-    def __init__(self, **changes):
+    def __init__(self, board=None, **changes):
+        """On `board`, which then tests itself as at its start; or on one of its own, with `changes` of the image."""
         import main
+        import startup
 
-        self.board = Board(**changes)
-        self.firmware = main.Firmware(self.board)
+        self.board = board or Board(**changes)
+        self.firmware = startup.start(board, main.Firmware) if board else main.Firmware(self.board)
         self.sequence = 0
         self.sent = []
         self.firmware.link.send = self._keep
@@ -242,12 +346,12 @@ class Session:
         self.ask(wire.HELLO, bytes([wire.VERSION, 0]))
         self.turns(160)
 
-    def sink(self, current_uA):
+    def sink(self, current_uA, when_silent=wire.SILENCE_STOP, run=0):
         """From nothing to sinking `current_uA`, the converter showing it."""
         import struct
 
         self.take_control()
         self.ask(wire.SET_POINT, struct.pack(wire.SET_POINT_FORMAT, wire.MODE_CURRENT, current_uA))
         self.board.show(None, 12_000_000)
-        self.ask(wire.ENABLE, bytes([wire.SILENCE_STOP]))
+        self.ask(wire.ENABLE, struct.pack(wire.ENABLE_FORMAT, when_silent, run, 0))
         self.turns(24)

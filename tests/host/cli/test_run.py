@@ -63,17 +63,31 @@ def test_check_tells_what_a_run_would_do_and_opens_nothing(tmp_path):
 
 
 def test_a_fault_ends_with_3_and_what_was_measured_is_kept(tmp_path):
+    # A source that wanders slowly past the plan's voltage limit: 12 V and up to half a volt more, within 5 s.
+    (tmp_path / "wandering.toml").write_text(
+        'kind = "supply"\nvoltage_V = 12.0\nresistance_ohm = 0.05\nripple_V = 1.0\nripple_Hz = 0.05\n'
+    )
+    plan = PLAN.replace("[[test]]", "[limits]\nvoltage_V = 12.4\n\n[[test]]").replace("= 3.0", "= 30.0")
+    port = f"sim:{tmp_path}/wandering.toml,speed=max"
+    done = call("run", write_plan(tmp_path, text=plan), "--port", port, "--out", tmp_path, "--json")
+    assert done.returncode == 3
+    (test,) = printed_json(done)["tests"]
+    assert test["stopped_by"] == "over-voltage"
+    assert test["quantities"]["voltage_V"]["value"] == pytest.approx(12.2, abs=0.2)
+    with open_record(tmp_path / printed_json(done)["record"].rpartition("/")[2]) as record:
+        assert record.state == "fault"
+        assert record.results()[0].stopped_by == "over-voltage"
+
+
+def test_a_run_that_gets_too_hot_is_throttled_by_the_board_and_inconclusive(tmp_path):
     hot = PLAN.replace("[[test]]", "[limits]\nheatsink_degC = 35.0\n\n[[test]]").replace(
         "current_A = 1.0\nduration_s = 3.0", "current_A = 2.0\nduration_s = 3000.0"
     )
     done = run_plan(write_plan(tmp_path, text=hot), tmp_path, "--json")
-    assert done.returncode == 3
+    assert done.returncode == 4
     (test,) = printed_json(done)["tests"]
-    assert test["stopped_by"] == "heatsink-hot"
+    assert test["stopped_by"] == "derated"
     assert test["quantities"]["voltage_V"]["value"] == pytest.approx(12.03, abs=0.1)
-    with open_record(tmp_path / printed_json(done)["record"].rpartition("/")[2]) as record:
-        assert record.state == "fault"
-        assert record.results()[0].stopped_by == "heatsink-hot"
 
 
 @pytest.mark.parametrize(

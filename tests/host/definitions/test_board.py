@@ -47,7 +47,7 @@ def test_the_shipped_board_spells_out_nearly_every_default() -> None:
     board = load_board()
     written = set(re.findall(r"^([A-Za-z]\w*) =", SHIPPED, flags=re.MULTILINE))
     for table in ("limits", "control", "i2c", "dac", "adc", "current_sense", "voltage_sense", "force_sense"):
-        keys = set(getattr(board, table).__struct_fields__) - {"inputs"}
+        keys = set(getattr(board, table).__struct_fields__) - {"inputs", "pin"}
         assert keys <= written, table
 
 
@@ -70,9 +70,9 @@ def test_bands_that_are_not_given_follow_from_the_limits() -> None:
         ({"limits__current_A": "6.0"}, "limits.current_A", "lower it to"),
         ({"adc__range_V": "2.048"}, "limits.current_A", "lower it to"),
         ({"limits__voltage_V": "40.0"}, "voltage_sense.ratio", "at least 12.6"),
-        ({"limits__power_W": "60.0"}, "limits.power_W", "lower it to 42.5 W"),
-        ({"heatsink__ambient_degC": "55"}, "limits.power_W", "lower it to 30 W"),
-        ({"heatsink__K_per_W": "1.6"}, "limits.power_W", "lower it to 28.1 W"),
+        ({"limits__power_W": "60.0"}, "limits.power_W", "lower it to 40.5 W"),
+        ({"heatsink__ambient_degC": "55"}, "limits.power_W", "lower it to 23.5 W"),
+        ({"heatsink__K_per_W": "1.6"}, "limits.power_W", "lower it to 21.8 W"),
         ({"control__period_s": "0.0015"}, "control.period_s", "at least 0.0017"),
         ({"control__period_s": "0.005"}, "control.period_s", "0.00235"),
         ({"i2c__frequency_Hz": "100000"}, "control.period_s", "faster bus"),
@@ -145,3 +145,21 @@ def test_a_missing_table_is_asked_for_as_a_table(tmp_path: Path) -> None:
     path.write_text('name = "x"\n', encoding="utf-8")
     with pytest.raises(FileError, match=r"limits: it is missing.*\[limits\]"):
         load_board(path)
+
+
+@pytest.mark.parametrize(
+    ("change", "key", "told"),
+    [
+        ({"current_sense__amplifier_gain": "8.5"}, "current_sense.amplifier_gain", "12 A"),
+        ({"voltage_sense__ratio": "20.0"}, "voltage_sense.ratio", "80 V"),
+        ({"force_sense__ratio": "20.0"}, "force_sense.ratio", "80 V"),
+    ],
+)
+def test_a_front_end_that_spans_more_than_the_firmware_holds_is_refused(
+    change: dict[str, str], key: str, told: str
+) -> None:
+    """The same bounds as firmware/meter.py, where such a board would refuse to boot."""
+    with pytest.raises(FileError) as refused:
+        parse_board(changed(**change))
+    assert key in str(refused.value)
+    assert told in str(refused.value)

@@ -6,12 +6,15 @@ import asyncio
 
 import pytest
 
+from sinkwright.board_run import BoardRun
 from sinkwright.definitions.loading import load_board, parse_board, parse_plan
 from sinkwright.errors import SinkwrightError
+from sinkwright.instrument import Instrument
 from sinkwright.procedures.job import Job, carry_out
 from sinkwright.procedures.progress import Warned
 from sinkwright.records import open_record
 from sinkwright.stopping import StopRequest
+from sinkwright_wire.vocabulary import RunEnd, State
 from tests.host.procedures.carrying_out import SOURCE, Listening
 
 PLAN = SOURCE + '[[test]]\nkind = "hold"\ncurrent_A = 1.0\nduration_s = 1.0\n'
@@ -28,7 +31,7 @@ def test_a_carried_out_job_leaves_a_complete_record_and_a_report(tmp_path):
         assert record.state == "complete"
         assert record.run_result() == done.result
         kinds = [event.kind for event in record.events()]
-        assert {"zero", "enabled", "disabled"} <= set(kinds)
+        assert {"zero", "board-run", "enabled", "ended"} <= set(kinds)
 
 
 def test_a_run_that_fails_leaves_a_record_that_says_so(tmp_path):
@@ -49,3 +52,15 @@ def test_another_board_file_than_the_boards_own_is_warned_about(tmp_path):
     asyncio.run(carry_out(Job(parse_plan(PLAN, "plan"), other, URL, tmp_path), progress, StopRequest()))
     warnings = [event.sentence for event in progress.events if isinstance(event, Warned)]
     assert any("set up from another board file" in warning for warning in warnings)
+
+
+def test_a_run_that_has_not_been_fetched_keeps_the_next_one_from_beginning(tmp_path, monkeypatch):
+    async def held(self: Instrument) -> BoardRun:
+        return BoardRun(7, State.ENDED, RunEnd.VOLTAGE, False, True, 1, 2, 0, 0, 0)
+
+    monkeypatch.setattr(Instrument, "board_run", held)
+    job = Job(parse_plan(PLAN, "plan"), load_board(), URL, tmp_path)
+    with pytest.raises(SinkwrightError, match="has not been fetched") as caught:
+        asyncio.run(carry_out(job, Listening(), StopRequest()))
+    assert "sinkwright resume" in str(caught.value)
+    assert list(tmp_path.iterdir()) == []

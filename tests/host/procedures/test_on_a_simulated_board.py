@@ -115,6 +115,42 @@ def test_a_cell_is_drained_to_its_end_voltage_and_its_charge_counted(tmp_path):
     assert abs(capacity.value - 0.02 * (1 - 0.0245)) <= capacity.expanded_uncertainty + 0.02 * 0.012
 
 
+@pytest.mark.parametrize(
+    ("setpoint", "current_A"),
+    [
+        # V = (12 + sqrt(12^2 - 4*0.5*20)) / 2, I = 12 / (6 + 0.5), I = (12 - 11.2) / 0.5
+        ("power_W = 20.0\n", 1.80196),
+        ("resistance_ohm = 6.0\n", 1.84615),
+        ("voltage_V = 11.2\n", 1.6),
+    ],
+)
+def test_a_hold_at_power_resistance_or_voltage_meets_the_load_line(tmp_path, setpoint, current_A):
+    plan = (
+        "[source]\nrated_voltage_V = 12.0\nrated_current_A = 3.0\n[limits]\ncurrent_A = 3.0\n"
+        + '[[test]]\nkind = "hold"\nduration_s = 5.0\n'
+        + setpoint
+    )
+    (test,) = measured(tmp_path, supply(12.0, 0.5), plan).tests
+    voltage_V = 12.0 - 0.5 * current_A
+    quantities = test.quantities
+    key, _, value = setpoint.strip().partition(" = ")
+    # What is held is what the board reads, so only what it holds otherwise is known within its uncertainty.
+    assert quantities[key].value == pytest.approx(float(value), rel=2e-3)
+    assert within(quantities["voltage_V"], voltage_V)
+    assert abs(quantities["current_A"].value - current_A) < 0.04 * current_A + (
+        0.1 if key == "voltage_V" else 0.0
+    )
+    assert not any("was not held" in note for note in test.notes)
+
+
+def test_a_power_that_the_source_cannot_give_is_told_in_words(tmp_path):
+    plan = '[source]\nrated_voltage_V = 12.0\n[[test]]\nkind = "hold"\nduration_s = 4.0\npower_W = 12.0\n'
+    (test,) = measured(tmp_path, supply(12.0, 4.0), plan).tests
+    assert any("more than the source can give" in note for note in test.notes)
+    # The most is 12 V squared over 16 ohm: 9 W.
+    assert test.quantities["power_W"].value == pytest.approx(9.0, rel=0.05)
+
+
 def test_a_run_on_a_simulated_board_repeats_to_the_last_digit(tmp_path):
     runs = [measured(tmp_path, supply(), PLAN + REGULATION).to_json() for _ in range(2)]
     assert runs[0] == runs[1]

@@ -6,7 +6,7 @@ import pytest
 
 from sinkwright.definitions.loading import load_board, parse_plan
 from sinkwright.errors import AskedTooMuch, SinkwrightError
-from sinkwright.procedures.preflight import preflight
+from sinkwright.procedures.preflight import check_source, preflight
 from tests.host.procedures.carrying_out import SOURCE
 
 HOLD = '[[test]]\nkind = "hold"\nduration_s = 10.0\n'
@@ -44,15 +44,71 @@ def test_more_than_the_sources_rated_power_is_refused():
         checked(SOURCE + "rated_power_W = 20.0\n" + HOLD + "current_A = 2.0\n")
 
 
-def test_going_on_without_a_host_is_refused_by_this_version():
-    text = 'when_host_silent = "continue"\n' + SOURCE + HOLD + "current_A = 1.0\nend_voltage_V = 10.0\n"
-    with pytest.raises(SinkwrightError, match="no ends of its own"):
+ALONE = 'when_host_silent = "continue"\n'
+
+
+def test_a_hold_with_its_ends_may_go_on_without_a_host():
+    assert checked(ALONE + SOURCE + HOLD + "current_A = 1.0\nend_voltage_V = 10.0\n").warnings == ()
+
+
+def test_an_end_that_a_board_cannot_be_told_is_refused_for_a_run_that_is_to_go_on_alone():
+    text = SOURCE + HOLD.replace("10.0", "2e7") + "current_A = 0.5\nend_voltage_V = 10.0\n"
+    with pytest.raises(AskedTooMuch, match=r"test\[1\] \(hold\): A duration of 2e\+07 s is beyond"):
+        checked(ALONE + text)
+    assert checked(text)
+
+
+def test_tests_that_need_their_host_are_named_when_the_plan_is_to_go_on_alone():
+    text = '[[test]]\nkind = "load-regulation"\n' + HOLD + "current_A = 1.0\nend_voltage_V = 10.0\n"
+    first, second = checked(ALONE + SOURCE + text).warnings
+    assert first.startswith("Test 1 (load-regulation) needs this program for each step")
+    assert "begins none after it" in second
+
+
+def test_a_source_that_is_empty_already_is_not_discharged():
+    plan = parse_plan(SOURCE + HOLD + "current_A = 1.0\nend_voltage_V = 10.0\n", "plan")
+    assert check_source(plan, load_board(), 12.0, 12.0) == []
+    with pytest.raises(SinkwrightError, match="must be charged first"):
+        check_source(plan, load_board(), 9.9, 9.9)
+
+
+@pytest.mark.parametrize(
+    ("setpoint", "current_A", "power_W", "words"),
+    [
+        ("power_W = 18.0\n", 1.5, 18.0, "draws a constant 18.000 W"),
+        # The current is largest at the end: 18 W at 9 V.
+        ("power_W = 18.0\nend_voltage_V = 9.0\n", 2.0, 18.0, "draws a constant 18.000 W"),
+        ("resistance_ohm = 8.0\n", 1.5, 18.0, "is a resistance of 8.000 ohm"),
+        ("voltage_V = 11.0\n", 2.0, 22.0, "holds the source at 11.000 V"),
+    ],
+)
+def test_what_another_set_point_draws_follows_from_the_rated_voltage(setpoint, current_A, power_W, words):
+    (test,) = checked(SOURCE + "[limits]\ncurrent_A = 2.0\n" + HOLD + setpoint).tests
+    assert (test.current_A, test.power_W) == (pytest.approx(current_A), pytest.approx(power_W))
+    assert words in test.sentence()
+
+
+@pytest.mark.parametrize(
+    ("text", "remedy"),
+    [
+        (SOURCE.replace("12.0", "28.0") + HOLD + "power_W = 50.0\n", "at most 40 W"),
+        (
+            SOURCE.replace("12.0", "28.0") + HOLD + "resistance_ohm = 19.0\n",
+            "at least 19.600 ohm at this volt",
+        ),
+        (SOURCE + HOLD + "resistance_ohm = 5.0\n", "at least 6.000 ohm at 12 V"),
+        (SOURCE + HOLD + "power_W = 20.0\nend_voltage_V = 8.0\n", "2 A is the most"),
+        (SOURCE + HOLD + "voltage_V = 11.0\n", r"current_A = 2 in \[limits\]"),
+    ],
+)
+def test_another_set_point_beyond_what_fits_is_refused_in_its_own_unit(text, remedy):
+    with pytest.raises(AskedTooMuch, match=remedy):
         checked(text)
 
 
-def test_a_set_point_other_than_current_is_refused_by_this_version():
-    with pytest.raises(SinkwrightError, match="constant current only"):
-        checked(SOURCE + HOLD + "power_W = 10.0\n")
+def test_a_constant_power_without_a_stated_voltage_is_no_load_that_stays_off():
+    (test,) = checked(HOLD + "power_W = 10.0\n").tests
+    assert test.sentence() == "hold: draws a constant 10.000 W, with a current that depends on the source"
 
 
 def test_bounds_that_no_reading_could_meet_are_warned_about():

@@ -11,6 +11,7 @@ from sinkwright.errors import RecordError
 from sinkwright.records import open_record
 from sinkwright.records.export import COLUMNS, export, guarded, to_csv, to_parquet
 from tests.host.records.made_up import write_run
+from tests.host.records.old_records import restored
 
 
 def exported(tmp_path: Path, **changes: object) -> list[dict[str, str]]:
@@ -116,3 +117,29 @@ def test_a_failed_export_leaves_nothing_behind_and_the_older_file_as_it_was(tmp_
         to_csv(record, tmp_path / "out.csv", fail)
     assert sorted(path.name for path in tmp_path.iterdir()) == ["out.csv", "r.sqlite"]
     assert (tmp_path / "out.csv").read_text() == "older"
+
+
+@pytest.mark.parametrize("suffix", [".csv", ".parquet"])
+def test_the_stretch_that_only_the_board_kept_follows_without_numbers(suffix: str, tmp_path: Path) -> None:
+    out = tmp_path / f"out{suffix}"
+    with open_record(restored(2, tmp_path)) as record:
+        assert export(record, out) == 15
+    rows = _rows_in(out)
+    assert [row["number"] or None for row in rows[10:]] == [None] * 5
+    last = rows[-1]
+    assert float(last["voltage_V"]) == pytest.approx(12.0095)
+    assert float(last["charge_C"]) == pytest.approx(10.0)
+    assert (last["state"], last["junction_degC"] or None, last["current_min_A"] or None) == (
+        "sinking",
+        None,
+        None,
+    )
+
+
+def _rows_in(path: Path) -> list[dict[str, Any]]:
+    if path.suffix == ".parquet":
+        import pyarrow.parquet
+
+        return pyarrow.parquet.read_table(path).to_pylist()
+    with path.open(newline="", encoding="utf-8") as file:
+        return list(csv.DictReader(file))

@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
+from sinkwright.simulator.memory import FORMAT, take_out
+
 from .board_side import check, check_under_cpython
 
 GRANTS = """
@@ -23,10 +27,11 @@ class Script:
         return self.grants.pop(0)
 
 from nominal_board import IMAGE
-def start(grants):
+def start(grants, **more):
     pipe = Script(grants)
-    setup = {"image": IMAGE, "plant": plant(), "seed": 3, "boot_number": 77, "board_id": "0011223344556677",
+    setup = {"image": IMAGE, "plant": plant(), "seed": 3, "board_id": "0011223344556677",
              "source": {"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1}}
+    setup.update(more)
     board.install(setup, pipe)
     return board.open_board(), pipe
 """
@@ -131,7 +136,7 @@ def test_the_board_says_who_it_is_and_that_it_is_simulated() -> None:
         GRANTS
         + """
 made, pipe = start([(1, b"")])
-assert made.simulated is True and made.boot_number == 77 and made.reset_cause == 1
+assert made.simulated is True and made.reset_cause == 1 and made.maintenance is False
 assert made.board_id == b"\\x00\\x11\\x22\\x33\\x44\\x55\\x66\\x77"
 assert made.interpreter.startswith("MicroPython 1."), made.interpreter
 assert len(made.interpreter) <= 32
@@ -141,20 +146,103 @@ assert made.led.shown == 3
     )
 
 
-def test_a_watchdog_that_was_fed_once_bites_when_it_is_not_fed_again() -> None:
-    """Source: the RP2's watchdog waits 8.3 s at most."""
+def test_a_watchdog_that_is_not_fed_resets_the_microcontroller_and_the_gate_is_clamped() -> None:
+    """The real board.py asks for 2 s; before its start it does not run, and after a reset neither."""
     check(
         GRANTS
         + """
 made, pipe = start([(1000000, b"")] * 30)
-made.clock.wait_until(20000000)  # never fed: it does not run
-made.feed_watchdog()
+made.clock.wait_until(5000000)
+made.watchdog.feed()
+made.clock.wait_until(8000000)  # not started: it does not run
+made.watchdog.start()
+made.clock.wait_until(9500000)
+made.watchdog.feed()
+made.gate.release()
+made.bus.writeto(0x60, b"\\x08\\x00")
+fed_at = made.clock.ticks_us()
+made.clock.wait_until(11000000)
 try:
-    made.clock.wait_until(31000000)
+    made.clock.wait_until(20000000)
     assert False
-except SystemExit as end:
-    assert end.args[0] == 4
-assert 28000000 <= made.clock.ticks_us() <= 30000000
+except board.Reset:
+    pass
+assert abs(made.clock.since(fed_at) - 2000000) < 1000, made.clock.since(fed_at)
+assert made.reset_cause == 2 and made.maintenance is False
+made.start_again()
+made.clock.wait_until(made.clock.add(made.clock.ticks_us(), 9000000))
+assert made.plant.current_A == 0.0
+assert made.dac.code == 0x800  # the chips were not reset
+"""
+    )
+
+
+def test_a_restart_is_told_to_the_next_start_and_what_was_written_leaves_before_it() -> None:
+    check(
+        GRANTS
+        + """
+made, pipe = start([(50000, b"")] * 3 + [(50000, b"lost")] + [(50000, b"")] * 7)
+made.stream.write(b"last words")
+try:
+    made.restart(True, 4)
+    assert False
+except board.Reset:
+    pass
+assert pipe.answers[0][1] == b"last words"
+assert made.maintenance is True and made.reset_cause == 4
+made.start_again()
+assert made.stream.read_into(bytearray(9)) == 0
+"""
+    )
+
+
+def test_ticks_wrap_at_2_to_the_30_and_time_goes_on() -> None:
+    check(
+        GRANTS
+        + """
+made, pipe = start([(1 << 31, b"")], first_ticks=(1 << 30) - 1000)
+clock = made.clock
+before = clock.ticks_us()
+clock.wait_until(clock.add(before, 2350))
+assert before == (1 << 30) - 1000 and clock.ticks_us() == 1350
+assert clock.since(before) == 2350 and clock.since(clock.add(before, 4700)) == -2350
+clock.wait_until(before)  # long past: not waited for
+assert clock.ticks_us() == 1350
+"""
+    )
+
+
+def test_the_store_of_a_board_with_a_memory_is_kept_whole_in_its_file(tmp_path: Path) -> None:
+    memory = {
+        "path": str(tmp_path / "m.json"),
+        "format": FORMAT,
+        "seed": 3,
+        "starts": 5,
+        "slots": ["", "0102"],
+    }
+    check(
+        GRANTS
+        + f"""
+made, pipe = start([(1000, b"")], memory={memory!r})
+assert made.store.read(0) == b"" and made.store.read(1) == bytes([1, 2])
+made.store.write(0, b"abc")
+assert made.store.read(0) == b"abc"
+"""
+    )
+    assert [path.name for path in tmp_path.iterdir()] == ["m.json"]
+    assert take_out(tmp_path / "m.json", 3).slots == ("616263", "0102")
+
+
+def test_button_and_fan_are_what_a_test_says_and_sees() -> None:
+    check(
+        GRANTS
+        + """
+made, pipe = start([(1000, b"")])
+assert made.button() is False
+made.off_pressed = True
+assert made.button() is True
+made.fan(True)
+assert made.fan_on is True
 """
     )
 

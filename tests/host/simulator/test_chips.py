@@ -160,13 +160,19 @@ assert not answers(lambda: world.bus.writeto(0x11, b"\\x00"))
 """)
 
 
-def test_a_converter_that_no_longer_converts_keeps_its_result_and_its_ready_flag() -> None:
+def test_a_converter_whose_oscillator_stands_still_keeps_its_result_and_is_never_ready() -> None:
+    """Source: SBAS444, config register: OS reads 0 while a conversion is under way."""
     check("""
 world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 0.1},
               defects=[{"kind": "adc_not_converting", "from_us": 50000}])
 first = world.convert(1)
+word = bytearray(2)
+world.bus.readfrom_mem_into(0x48, 1, word)
+assert word[0] & 0x80
 world.run_s(0.1)
 assert world.convert(3) == first
+world.bus.readfrom_mem_into(0x48, 1, word)
+assert not word[0] & 0x80
 """)
 
 
@@ -220,4 +226,65 @@ world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 0.1}, dac=
 for code, counts in ((0, 0.0), (512, 2.0), (1024, 4.0), (2560, 4.0 * (4095 - 2560) / 3071)):
     world.bus.writeto(0x60, bytes([code >> 8, code & 0xFF]))
     near(world.board.dac.output_V(), 3.3 * (code + counts) / 4096, 1e-9)
+""")
+
+
+def test_a_stuck_bit_of_the_converter_is_one_in_every_result() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1}, defects=[
+    {"kind": "adc_bit_14", "from_us": 50000, "until_us": 100000}, {"kind": "adc_bit_15", "from_us": 150000}])
+true = world.convert(1)
+world.run_s(0.06)
+assert world.convert(1) == true | 0x4000
+world.run_s(0.1)
+assert world.convert(1) == (true | 0x8000) - 0x10000
+""")
+
+
+def test_an_idle_converter_takes_its_orders_and_says_ready_but_begins_nothing() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 0.1},
+              defects=[{"kind": "adc_idle", "from_us": 50000}])
+first = world.convert(1)
+world.run_s(0.1)
+world.begin(3)
+word = bytearray(2)
+world.bus.readfrom_mem_into(0x48, 1, word)
+assert word[0] & 0x80 and world.finish() == first
+""")
+
+
+def test_a_stuck_dac_keeps_its_output_and_a_dead_one_gives_none_while_the_registers_tell_what_was_written() -> (
+    None
+):
+    check("""
+world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 0.1}, defects=[
+    {"kind": "dac_stuck", "from_us": 50000, "until_us": 100000}, {"kind": "dac_dead", "from_us": 150000}])
+world.bus.writeto(0x60, b"\\x08\\x00")
+world.run_s(0.06)
+world.bus.writeto(0x60, b"\\x04\\x00")
+near(world.board.dac.output_V(), 1.65, 1e-9)
+assert world.board.dac.code == 0x400
+world.run_s(0.06)
+near(world.board.dac.output_V(), 0.825, 1e-9)
+world.run_s(0.06)
+near(world.board.dac.output_V(), 0.0, 0.0)
+""")
+
+
+def test_on_a_bus_held_low_each_transaction_runs_into_its_time_out() -> None:
+    """Source: board.py asks for 2 ms."""
+    check("""
+world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 0.1},
+              defects=[{"kind": "bus_stuck_low", "from_us": 50000, "until_us": 100000}])
+world.run_s(0.06)
+before = world.plant.now
+try:
+    world.bus.writeto(0x60, b"\\x08\\x00")
+    assert False
+except OSError as error:
+    assert error.errno == 110
+assert world.plant.now - before >= 2000
+world.run_s(0.1)
+world.bus.writeto(0x60, b"\\x08\\x00")
 """)

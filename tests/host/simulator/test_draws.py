@@ -10,7 +10,7 @@ import sys
 import pytest
 
 from sinkwright.definitions import load_board, parse_board, parse_source
-from sinkwright.simulator.draws import draw_board_id, draw_boot_number, draw_plant, source_keys
+from sinkwright.simulator.draws import draw_board_id, draw_plant, source_keys
 
 BOARD = load_board()
 SEEDS = range(300)
@@ -60,7 +60,6 @@ def test_the_same_seed_draws_the_same_board_in_another_process():
 def test_different_seeds_draw_different_boards():
     assert len({json.dumps(draw_plant(BOARD, seed)) for seed in SEEDS}) == len(SEEDS)
     assert len({draw_board_id(seed) for seed in SEEDS}) == len(SEEDS)
-    assert len({draw_boot_number(seed) for seed in SEEDS}) == len(SEEDS)
 
 
 def test_one_tolerance_changed_leaves_the_other_parts_as_they_were():

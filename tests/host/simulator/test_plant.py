@@ -184,3 +184,103 @@ for k in range(60):
 """
     printed = check(script)
     assert printed == check(script) == check_under_cpython(script)
+
+
+def test_a_reversed_source_finds_the_body_diode_although_the_gate_is_clamped() -> None:
+    """Source: (12 V - 0.7 V) / (1 + 0.025 ohm); the sense amplifier is at its lower rail."""
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 1.0},
+              defects=[{"kind": "source_reversed", "from_us": 100000}])
+world.run_s(0.2)
+near(world.plant.current_A, -11.3 / 1.025, 1e-3)
+near(world.voltage_V(), -(0.7 + 11.3 / 1.025 * 0.025), 2e-3)
+near(world.current_A(), -0.16, 1e-3)
+""")
+
+
+def test_a_lifted_sense_resistor_lets_the_loop_close_with_next_to_no_current() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1},
+              defects=[{"kind": "resistor_open", "from_us": 100000}])
+asked_A = world.sink(1.0)
+world.run_s(0.2)
+near(world.plant.current_A, asked_A * 0.025 / 1e3, 1e-6)
+near(world.current_A(), asked_A, 2e-3)
+""")
+
+
+def test_a_bridged_sense_resistor_shows_a_fraction_of_the_current() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 1.0},
+              defects=[{"kind": "resistor_shorted", "from_us": 100000}])
+world.sink(1.0)
+world.run_s(0.2)
+near(world.plant.current_A, 12.0 / 1.0505, 1e-3)
+near(world.current_A(), 12.0 / 1.0505 * 0.0005 / 0.025, 1e-3)
+""")
+
+
+def test_an_open_sense_lead_reads_nothing_and_a_swapped_one_below_nothing() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1}, defects=[
+    {"kind": "sense_open", "from_us": 100000, "until_us": 200000},
+    {"kind": "sense_swapped", "from_us": 300000, "until_us": 400000}])
+for seconds, expected in ((0.15, 0.0), (0.1, 12.0), (0.1, -1.1), (0.1, 12.0)):
+    world.run_s(seconds)
+    near(world.voltage_V(), expected, 2e-3)
+    near((world.convert(2) * 125e-6 - 0.1) * 11.0, 12.0, 2e-3)
+""")
+
+
+def test_a_clamp_that_does_not_clamp_leaves_the_current_to_the_dac() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1},
+              defects=[{"kind": "clamp_ineffective", "from_us": 100000}])
+asked_A = world.sink(1.0)
+world.run_s(0.2)
+world.board.gate.clamp()
+world.run_s(0.01)
+near(world.plant.current_A, asked_A, 1e-4)
+world.demand(-0.16)
+world.run_s(0.01)
+near(world.plant.current_A, 0.0, 1e-9)
+""")
+
+
+def test_without_its_fan_the_sink_heads_for_a_higher_temperature_as_slowly_as_its_mass_lets_it() -> None:
+    """Source: one Foster stage: four times the resistance and time constant, the rise so far kept."""
+    check("""
+world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 1e-6},
+              defects=[{"kind": "fan_dead", "from_us": 300000000}])
+true_A = world.sink(1.0)
+world.run_s(300.0)
+before = 25.0 * true_A * (1 - math.exp(-1))
+world.run_s(300.0)
+world.look()
+after = 100.0 * true_A + (before - 100.0 * true_A) * math.exp(-0.25)
+near(world.plant.heat.heatsink_degC - 25.0, after, 0.05)
+""")
+
+
+def test_a_thermistor_that_has_come_off_tells_the_airs_temperature_before_long() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 10.0, "resistance_ohm": 1e-6},
+              defects=[{"kind": "thermistor_loose", "from_us": 300000000}])
+world.sink(2.0)
+world.run_s(299.0)
+assert world.plant.heat.sensor_degC > 50.0
+world.run_s(91.0)
+world.look()
+assert world.plant.heat.heatsink_degC > 60.0
+near(world.plant.heat.sensor_degC, 25.0, 0.3)
+""")
+
+
+def test_a_supply_whose_regulator_fails_rises_and_returns() -> None:
+    check("""
+world = World({"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1},
+              defects=[{"kind": "source_high", "from_us": 100000, "until_us": 200000, "value": 33.0}])
+for seconds, volt in ((0.15, 33.0), (0.1, 12.0)):
+    world.run_s(seconds)
+    near(world.voltage_V(), volt, 3e-3)
+""")

@@ -52,7 +52,7 @@ import json
 from nominal_board import IMAGE
 base = plant()
 base["adc"]["noise_counts"] = 20.0
-print(json.dumps({"image": IMAGE, "plant": base, "seed": 5, "boot_number": 9, "board_id": "0011223344556677",
+print(json.dumps({"image": IMAGE, "plant": base, "seed": 5, "board_id": "0011223344556677",
                   "source": {"kind": "supply", "voltage_V": 12.0, "resistance_ohm": 0.1}}))
 """)
     return json.loads(printed)

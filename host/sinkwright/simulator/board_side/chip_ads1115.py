@@ -46,6 +46,8 @@ class Chip:
         self.busy_until = -1
         self.window_us = 0
         self.stuck = False
+        self._idle = False
+        self._high_bits = 0  # bits of the result that are stuck at one
 
     # -- the bus --------------------------------------------------------------------------------------------
 
@@ -54,7 +56,7 @@ class Chip:
         now = self._plant.now
         if register == _CONFIG:
             value = self._config
-            if now >= self.busy_until:
+            if now >= self.busy_until and not self.stuck:
                 if value & _CONTINUOUS_IS_0:
                     value |= _OS
         elif register == _CONVERSION:
@@ -62,7 +64,7 @@ class Chip:
                 self._result = self.pending
                 if not self._config & _CONTINUOUS_IS_0:
                     self._go_on(now)
-            value = self._result
+            value = self._result | self._high_bits
         else:
             value = self._thresholds[register & 1]
         buffer[0] = value >> 8 & 0xFF
@@ -77,7 +79,7 @@ class Chip:
             if now >= self.busy_until:
                 self._result = self.pending
             self._config = value & 0x7FFF
-            if starts and not self.stuck:
+            if starts and not self.stuck and not self._idle:
                 self._start(now)
         elif register > _CONFIG:
             self._thresholds[register & 1] = value
@@ -93,6 +95,19 @@ class Chip:
         if command == 0x06:
             self._config = _RESET & ~_OS
             self.busy_until = -1
+
+    def set_defect(self, kind, begins):
+        """Begin or end a defect.
+
+        "not_converting": its oscillator stands still, so a conversion that is asked for never ends. "idle": it takes
+        its orders, says that it is ready, and begins nothing. "bit_15" and "bit_14": that bit of every result is one.
+        """
+        if kind == "not_converting":
+            self.stuck = begins
+        elif kind == "idle":
+            self._idle = begins
+        else:
+            self._high_bits = 1 << int(kind[4:]) if begins else 0
 
     # -- converting -----------------------------------------------------------------------------------------
 

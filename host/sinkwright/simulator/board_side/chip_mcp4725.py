@@ -21,10 +21,13 @@ class Chip:
         self.code = self._eeprom
         self._down = 0
         self._busy_until = 0
+        self._held_V = None
         plant.set_dac(self.output_V())
 
     def output_V(self):
         """Vout = reference * (code + nonlinearity) / 4096; powered down, it is pulled low (table 5-2)."""
+        if self._held_V is not None:
+            return self._held_V
         if self._down:
             return 0.0
         return self._reference_V * (self.code + self._nonlinearity()) / 4096.0
@@ -59,6 +62,9 @@ class Chip:
 
     def read_register(self, _register, buffer):
         """`readfrom_mem_into`: a one-byte write, which completes no command, then a read."""
+        self.read(buffer)
+
+    def read(self, buffer):
         ready = self._plant.now >= self._busy_until
         answer = (
             (0x80 if ready else 0) | 0x40 | self._down << 1,
@@ -76,6 +82,13 @@ class Chip:
             self._set(self._eeprom, self._eeprom_down)
         elif command == 0x09:
             self._set(self.code, 0)
+
+    def set_defect(self, kind, begins):
+        """The output stays where it is ("stuck") or falls to nothing ("dead"); the registers tell what was written."""
+        self._held_V = None
+        if begins:
+            self._held_V = 0.0 if kind == "dead" else self.output_V()
+        self._plant.set_dac(self.output_V())
 
     def _set(self, code, down):
         self.code = code

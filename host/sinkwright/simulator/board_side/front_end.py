@@ -26,6 +26,7 @@ class FrontEnd:
         self._volt_per_A = 0.0
         self.clip_A = 0.0
         self._remote = remote_sense
+        self.sense_seen = 1.0  # what the sense pair brings of its voltage: 0 when open, -1 when swapped
         self._voltage = _Divider(plant["voltage"], inputs["voltage"])
         self._force = _Divider(plant["force"], inputs["force"])
         self._ripple = Ripple(source.ripple_Hz) if source.ripple_Hz else None
@@ -46,7 +47,7 @@ class FrontEnd:
         volt = self._pedestal_V + self._volt_per_A * current_A
         pins[self._current_pin] = int(min(max(volt, 0.0), self._current_rail_V) * 1e9)
         voltage = self._voltage
-        pins[voltage.pin] = voltage.level_nV(source_V if self._remote else terminal_V)
+        pins[voltage.pin] = voltage.level_nV(self.sense_seen * (source_V if self._remote else terminal_V))
         pins[self._force.pin] = self._force.level_nV(terminal_V)
 
     def set_ripple(self, amplitude_V):

@@ -8,6 +8,8 @@ exact for a power that is constant over the step, however long.
 import math
 
 _KELVIN = 273.15
+# How long a bead takes to follow the air around it: from memory, NTCs of some millimetres in still air.
+_LOOSE_s = 15.0
 
 
 class HeatChain:
@@ -18,11 +20,29 @@ class HeatChain:
         self._case = [plant["case_to_sink"][0], plant["case_to_sink"][1], 0.0]
         self._sink = [plant["heatsink"][0], plant["heatsink"][1], 0.0]
         self._all = self._stages + [self._case, self._sink]
+        self._sink_K_per_W = plant["heatsink"][0]
+        self._sink_s = plant["heatsink"][1]
+        self._loose = False
+        self._sensor_K = 0.0
 
     def step(self, power_W, h):
         """`power_W` for `h` seconds."""
         for stage in self._all:
             stage[2] += (power_W * stage[0] - stage[2]) * (1.0 - math.exp(-h / stage[1]))
+        self._sensor_K = self._sensor_K * math.exp(-h / _LOOSE_s) if self._loose else self._sink[2]
+
+    def slow_fan(self, factor):
+        """The sink's resistance to the air becomes `factor` times as large; its heat capacity stays."""
+        self._sink[0] = self._sink_K_per_W * factor
+        self._sink[1] = self._sink_s * factor
+
+    def loosen_sensor(self, loose):
+        """The sensor hangs in the air from now on, and comes to its temperature."""
+        self._loose = loose
+
+    @property
+    def sensor_degC(self):
+        return self.ambient_degC + self._sensor_K
 
     @property
     def heatsink_degC(self):
@@ -46,12 +66,18 @@ class SenseResistor:
         self._K_per_W = entry.get("heating_K_per_W") or 0.0
         self._tau_s = entry.get("heating_s") or 5.0
         self._rise_K = 0.0
+        self._instead_ohm = 0.0
         self.ohm = self._cold_ohm
 
     def step(self, current_A, h):
         power_W = current_A * current_A * self.ohm
         self._rise_K += (power_W * self._K_per_W - self._rise_K) * (1.0 - math.exp(-h / self._tau_s))
-        self.ohm = self._cold_ohm * (1.0 + self._per_K * self._rise_K)
+        self.ohm = self._instead_ohm or self._cold_ohm * (1.0 + self._per_K * self._rise_K)
+
+    def replace(self, ohm):
+        """From now on another resistance is found there; 0 brings the resistor back."""
+        self._instead_ohm = ohm
+        self.ohm = ohm or self._cold_ohm
 
 
 class Thermistor:

@@ -12,6 +12,7 @@ follow, and the transistor's on-resistance as the floor of the voltage.
 
 import math
 
+import defects
 from front_end import FrontEnd
 from heat import HeatChain, SenseResistor, Thermistor
 from sources import open_source
@@ -24,6 +25,8 @@ _FIRST_SMALL_us = 250
 _LARGEST_us = 250
 _SETTLED_FROM_us = 32
 _SETTLED_A = 2e-6
+# The same where the whole current is microamperes: through what is left of a lifted sense resistor.
+_SETTLED_OPEN_A = 1e-9
 _SETTLED_V = 2e-6
 _SETTLED_RAIL_A = 1e-3
 # A demand that changes by less is over before the finest steps could show it.
@@ -31,6 +34,8 @@ _SMALL_A = 0.02
 # More than this between two slow steps is no drift any more.
 _DRIFT_V = 2e-4
 _SHORTED_A = 1e6
+# What the transistor's body diode takes; its slope is counted to the sense resistor's side.
+_DIODE_V = 0.7
 
 
 class Plant:
@@ -57,11 +62,14 @@ class Plant:
 
         self._dac_V = -1.0  # not yet known: the DAC tells at power-up
         self._clamped = True
-        self._shorted = False
-        self._connected = True
-        self._events = _schedule(plant.get("defects") or ())
-        self.on_defect = None  # defects of chips are the bus's business
-        self._next_event = self._events[0][0] if self._events else FAR
+        self._clamp_asked = True
+        self._clamp_broken = False
+        self.shorted = False
+        self._contact = ""  # or how the source is missing: "disconnected", "reversed"
+        self._settled_A = _SETTLED_A
+        self._events = defects.schedule(plant.get("defects") or ())
+        self.on_defect = None
+        self._next_event = FAR
 
         self.demand_A = 0.0
         self.drive_A = 0.0  # what the amplifier asks of the transistor
@@ -84,6 +92,12 @@ class Plant:
         self._follow_heat()
         self._publish()
 
+    def arm(self, on_defect):
+        """From now on the defects happen; `on_defect(kind, begins)` is told those of chips and bus."""
+        self.on_defect = on_defect
+        self._next_event = self._events[0][0] if self._events else FAR
+        self.catch_up()
+
     # -- what the board does --------------------------------------------------------------------------------
 
     def set_dac(self, volt):
@@ -97,6 +111,9 @@ class Plant:
         self.demand_A = demand
 
     def set_gate(self, clamped):
+        self._clamp_asked = clamped
+        if self._clamp_broken:
+            clamped = False
         if clamped != self._clamped:
             self.disturb(_FIRST_us)
             self._clamped = clamped
@@ -112,6 +129,11 @@ class Plant:
         if first_us == _FIRST_us or self._at - self._heat_at >= _SLOW_us:
             self._follow_heat()
         self._plan()
+
+    def look(self):
+        """Pin levels of this very moment, for a converter without a window."""
+        self.catch_up()
+        self._publish()
 
     def _wake(self, at, first_us):
         """From rest: the state brought to `at`, and what a foretold conversion has seen up to there."""
@@ -217,16 +239,16 @@ class Plant:
             drive = 0.0
         elif drive > self._rail_A:
             drive = self._rail_A
+            mean = -1.0
         wanted = drive
-        if self._shorted:
+        if self.shorted:
             wanted = _SHORTED_A
         elif self._clamped:
             wanted = 0.0
         path = self._leads_ohm + self._on_ohm + self.sense.ohm
         henry = self._leads_H
-        if not self._connected:
-            source.step(h, 0.0, 0.0, 1.0)
-            load = volt = terminal = 0.0
+        if self._contact:
+            load, volt, terminal = self._without_contact(h)
         else:
             if henry:
                 z = h / henry
@@ -237,15 +259,15 @@ class Plant:
             load = source.current_A
             volt = source.voltage_V
             terminal = volt - self._leads_ohm * load - henry * (load - current) / h
-        self._regulating = load >= wanted and not self._clamped and not self._shorted and self._connected
+        self._regulating = load >= wanted and not self._clamped and not self.shorted and not self._contact
         if mean < 0.0 or not self._regulating:
             mean = load
         if self._regulating:
             restless = abs(drive - target) if drive > 0.0 or target > 0.0 else 0.0
-            self._settled = restless < _SETTLED_A
+            self._settled = restless < self._settled_A
         else:
             self._settled = abs(drive - self.drive_A) < _SETTLED_RAIL_A
-        if abs(load - current) > _SETTLED_A or abs(volt - self.source_V) > _SETTLED_V or source.moving:
+        if abs(load - current) > self._settled_A or abs(volt - self.source_V) > _SETTLED_V or source.moving:
             self._settled = False
         self.drive_A = drive
         self.current_A = load
@@ -258,6 +280,20 @@ class Plant:
             self._sum_terminal += terminal * us
             self._sum_current += (mean if mean < clip else clip) * us
 
+    def _without_contact(self, h):
+        """Load current, source's and terminals' voltage while the source is away, or the wrong way round.
+
+        Reversed, it finds the body diode, which no gate can close.
+        """
+        source = self.source
+        if self._contact == "disconnected" or source.voltage_V <= _DIODE_V:
+            source.step(h, 0.0, 0.0, 1.0)
+            return 0.0, 0.0, 0.0
+        ohm = self._leads_ohm + self.sense.ohm
+        source.step(h, _SHORTED_A, -_DIODE_V / ohm, 1.0 / ohm)
+        load = source.current_A
+        return -load, -source.voltage_V, self._leads_ohm * load - source.voltage_V
+
     def _follow_heat(self):
         """Temperatures up to now, and what drifts with them."""
         elapsed = self._at - self._heat_at
@@ -268,11 +304,11 @@ class Plant:
             self._energy_J = 0.0
             self._heat_at = self._at
             self.demand_A = self.front.demand_A(self._dac_V, self.sense.ohm)
-        self.front.set_heatsink(self.thermistor.pin_V(self.heat.heatsink_degC), self.sense.ohm)
+        self.front.set_heatsink(self.thermistor.pin_V(self.heat.sensor_degC), self.sense.ohm)
 
     def _publish(self):
         self.front.publish(self.source_V, self.terminal_V, self.current_A)
-        self.has_ripple = self.front.set_ripple(self.source.ripple_V if self._connected else 0.0)
+        self.has_ripple = self.front.set_ripple(self.source.ripple_V if not self._contact else 0.0)
 
     # -- the conversion window ------------------------------------------------------------------------------
 
@@ -314,7 +350,7 @@ class Plant:
     def _close_window(self):
         us = self.adc.window_us
         self.front.publish(self._sum_source / us, self._sum_terminal / us, self._sum_current / us)
-        self.has_ripple = self.front.set_ripple(self.source.ripple_V if self._connected else 0.0)
+        self.has_ripple = self.front.set_ripple(self.source.ripple_V if not self._contact else 0.0)
         self.adc.pending = self.adc.convert()
 
     # -- defects --------------------------------------------------------------------------------------------
@@ -322,28 +358,27 @@ class Plant:
     def _happen(self, at):
         """The events that are due at `at`; before each the state stands there."""
         while self._next_event <= at:
-            _, kind, begins = self._events.pop(0)
+            _, kind, begins, value = self._events.pop(0)
             self._next_event = self._events[0][0] if self._events else FAR
             if not self.moving:
                 self._wake(at, _FIRST_us)
             self._step_us = _FIRST_us
             self._follow_heat()
-            if kind == "source_disconnected":
-                self._connected = not begins
-            elif kind == "transistor_short":
-                self._shorted = begins
-            elif kind.startswith("thermistor_"):
-                self.thermistor.defect = kind[11:] if begins else ""
-                self._follow_heat()
-            elif self.on_defect:
-                self.on_defect(kind, begins)
+            defects.happen(self, kind, begins, value)
+            self._follow_heat()
 
+    def set_contact(self, contact):
+        """How the source is connected: "" as it should be, "disconnected", "reversed"."""
+        self._contact = contact
+        self.current_A = 0.0
 
-def _schedule(defects):
-    """[(time in us, kind, whether it begins)] in the order of time."""
-    events = []
-    for defect in defects:
-        events.append((defect["from_us"], defect["kind"], True))
-        if defect.get("until_us") is not None:
-            events.append((defect["until_us"], defect["kind"], False))
-    return sorted(events)
+    def break_clamp(self, broken):
+        """A broken clamp leaves the gate to the amplifier, whatever the pin says."""
+        self._clamp_broken = broken
+        self._clamped = self._clamp_asked and not broken
+
+    def set_sense_ohm(self, ohm):
+        """Another resistance stands where the sense resistor stood; 0 is the resistor itself."""
+        self.sense.replace(ohm)
+        self._settled_A = _SETTLED_OPEN_A if ohm > 1.0 else _SETTLED_A
+        self.demand_A = self.front.demand_A(self._dac_V, self.sense.ohm)

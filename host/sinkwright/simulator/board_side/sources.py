@@ -31,7 +31,7 @@ class Supply:
     """
 
     def __init__(self, source):
-        self.voltage_V = self._open_V = source["voltage_V"]
+        self.voltage_V = self._open_V = self._nominal_V = source["voltage_V"]
         resistance = max(source["resistance_ohm"], 1e-9)
         self._recovery_s = source.get("recovery_s") or 0.0
         self._static_ohm = resistance if self._recovery_s else 0.0
@@ -54,6 +54,10 @@ class Supply:
         self._quiet_s = 0.0
         self.wait_s = _NEVER
         self.moving = False
+
+    def set_open_V(self, volt):
+        """Its regulator fails and the output rises to `volt`; None brings back what it was set to."""
+        self._open_V = self._nominal_V if volt is None else volt
 
     def _set_limit(self, source):
         limit = source.get("limit_A")

@@ -2,8 +2,9 @@
 
 The first line on the standard input is one JSON object: "firmware" (folder, unless given as argument),
 "image" (the board image), "plant" and "source" (the world, see plant.py and sources.py), "seed",
-"boot_number", "board_id" (hex). After it the pipe protocol of pipe.py begins. Exit codes: 0 the host has
-gone, 1 an exception left the firmware, 3 the first line is no good, 4 the watchdog was not fed.
+"board_id" (hex), and if there is one "memory" (what outlasts the process, see board.py). After it the pipe
+protocol of pipe.py begins. A reset of the microcontroller runs the firmware anew in the same world. Exit
+codes: 0 the host has gone, 1 the firmware has left its loop for good, 3 the first line is no good.
 """
 
 import json
@@ -16,7 +17,7 @@ _BAD_SETUP = 3
 def read_setup(stream):
     """The first line, checked for what cannot be done without."""
     setup = json.loads(stream.readline())
-    for key in ("image", "plant", "source", "seed", "boot_number", "board_id"):
+    for key in ("image", "plant", "source", "seed", "board_id"):
         if key not in setup:
             raise ValueError("the first line has no " + repr(key))
     return setup
@@ -38,6 +39,8 @@ def print_into(stream):
         text = sep.join([str(value) for value in values]) + end
         if file is None:
             stream.write(text.encode())
+            # Kept for whoever asks why a board has gone.
+            sys.stderr.write(text)
         else:
             file.write(text)
 
@@ -52,6 +55,23 @@ def explain(error):
         import traceback
 
         traceback.print_exception(error)
+
+
+def run_for_ever(board):
+    """The firmware, again after each reset, when it starts with modules that know nothing of before."""
+    kept = list(sys.modules)
+    simulated = board.open_board()
+    while True:
+        try:
+            import main as firmware
+
+            firmware.run(simulated)
+            return
+        except board.Reset:
+            for name in list(sys.modules):
+                if name not in kept:
+                    del sys.modules[name]
+        simulated.start_again()
 
 
 def main():
@@ -72,12 +92,10 @@ def main():
 
     builtins.print = print_into(simulated.stream)
     try:
-        import main as firmware
-
-        firmware.run(board.open_board())
+        run_for_ever(board)
     except Exception as error:
         explain(error)
-        sys.exit(_FIRMWARE_FAILED)
+    sys.exit(_FIRMWARE_FAILED)
 
 
 if __name__ == "__main__":
