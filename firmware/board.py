@@ -58,7 +58,7 @@ class Stream:
     def read_into(self, buffer):
         """Bytes that are there, into `buffer`; return how many. One at a time: a longer read would block."""
         count = 0
-        while count < len(buffer) and self._poll.poll(0):
+        while count < len(buffer) and _ready(self._poll):
             sys.stdin.buffer.readinto(self._byte)
             buffer[count] = self._byte[0]
             count += 1
@@ -75,11 +75,18 @@ class Stream:
         return len(data)
 
     def pump(self):
-        if self._waiting and self._poll_out.poll(0):
+        if self._waiting and _ready(self._poll_out):
             self._byte[0] = self._out[self._first]
             sys.stdout.buffer.write(self._byte)
             self._first = (self._first + 1) % _OUT_BYTES
             self._waiting -= 1
+
+
+def _ready(poll):
+    """Whether the one stream of `poll` is ready; `ipoll` makes no list, and this is asked all the idle time."""
+    for _ in poll.ipoll(0):
+        return True
+    return False
 
 
 class Gate:
@@ -103,7 +110,8 @@ class Led:
         self._green = machine.Pin(green, machine.Pin.OUT, value=0)
 
     def show(self, state):
-        self._red.value(state in (wire.STATE_SINKING, wire.STATE_FAULT))
+        # Called within the control step, where `in (...)` would make a tuple.
+        self._red.value(state == wire.STATE_SINKING or state == wire.STATE_FAULT)
         self._green.value(state != wire.STATE_SINKING)
 
 
@@ -130,7 +138,7 @@ class Board:
         self.reset_cause = (
             wire.RESET_WATCHDOG if machine.reset_cause() == machine.WDT_RESET else wire.RESET_POWER_ON
         )
-        self.interpreter = "MicroPython " + ".".join(str(part) for part in sys.implementation[1][:3])
+        self.interpreter = "MicroPython " + ".".join(str(part) for part in sys.implementation.version[:3])
 
 
 def open_board():

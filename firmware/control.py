@@ -9,6 +9,7 @@ from micropython import const
 
 import wire
 from chips.adc_ads1115 import LOWEST_COUNTS, NOT_READY
+from meter import MOST_STEPS
 
 _VOLTAGE = const(0)
 _CURRENT = const(1)
@@ -28,13 +29,15 @@ _TRIM_BITS = const(6)
 
 
 class Control:
-    def __init__(self, image, dac, adc, scales, demand, machine, guard, meter, timekeeper, junction):
+    def __init__(
+        self, image, dac, adc, scales, thermistor, demand, machine, guard, meter, timekeeper, junction
+    ):
         self._dac = dac
         self._adc = adc
         self._voltage = scales["voltage"]
         self._current = scales["current"]
         self._force = scales["force"]
-        self._thermistor = scales["thermistor"]
+        self._thermistor = thermistor
         self._demand = demand
         self._machine = machine
         self._guard = guard
@@ -69,7 +72,8 @@ class Control:
 
     def step(self):
         self._guard.step(self._time.tick())
-        self._meter.steps += 1
+        if self._meter.steps < MOST_STEPS:
+            self._meter.steps += 1
         self.using = wire.FAULT_ADC_SILENT
         if self._converting:
             self._collect()
@@ -171,8 +175,8 @@ class Control:
             self._trim()
 
     def _judge_shortage(self):
-        self._short_pairs += 1
-        if self._short_pairs < _SHORT_OF_DEMAND_PAIRS:
+        if self._short_pairs < _SHORT_OF_DEMAND_PAIRS - 1:
+            self._short_pairs += 1
             return
         nothing_there = self._meter.voltage_uV < _NO_SOURCE_uV and self._meter.current_uA < self._margin_uA
         self.limiting = wire.LIMITING_NO_SOURCE if nothing_there else wire.LIMITING_SOURCE

@@ -17,6 +17,8 @@ import wire
 _NOT_READY_ALLOWED = const(8)
 #: Control steps after clamping for which a conversion may still have seen current.
 _CLAMP_STEPS = const(6)
+#: Where the count of quiet steps stops: more than a day, and more than any limit.
+_LONG_QUIET_STEPS = const(1 << 26)
 _LATE_us = const(50_000)
 _COOLER_mC = const(5_000)
 _REVERSED_uV = const(-300_000)
@@ -108,7 +110,8 @@ class Guard:
 
     def step(self, late_us):
         """Once a control step: lateness and the host's silence."""
-        self.quiet_steps += 1
+        if self.quiet_steps < _LONG_QUIET_STEPS:
+            self.quiet_steps += 1
         if late_us > _LATE_us:
             self.latch(wire.FAULT_LOOP_LATE, late_us, _LATE_us)
             self._time.start_afresh()
@@ -139,8 +142,9 @@ class Guard:
         if current_uA <= self._off_current_uA:
             self._off_readings = 0
             return
-        self._off_readings += 1
-        if self._off_readings >= 2:
+        if not self._off_readings:
+            self._off_readings = 1
+        else:
             self.latch(wire.FAULT_CURRENT_ALTHOUGH_OFF, current_uA, self._off_current_uA)
 
     def on_voltage(self, voltage_uV):
@@ -169,7 +173,8 @@ class Guard:
 
     def on_no_conversion(self, not_ready, config_seen):
         """The converter answered without a result: at once a fault when it converts something else."""
-        self.not_ready += 1
+        if self.not_ready <= _NOT_READY_ALLOWED:
+            self.not_ready += 1
         if not not_ready or self.not_ready > _NOT_READY_ALLOWED:
             self.latch(wire.FAULT_ADC_NOT_CONVERTING, config_seen, 0)
 

@@ -44,6 +44,7 @@ class Firmware:
             MCP4725(board.bus, image["dac"]),
             ADS1115(board.bus, image["adc"]),
             _scales(image),
+            Thermistor(image["thermistor"]),
             Demand(image["dac"]),
             self.machine,
             self.guard,
@@ -96,7 +97,6 @@ def _scales(image):
     ):
         if scales[name].largest() > largest:
             raise ValueError("the " + name + " scale passes what the meter can hold")
-    scales["thermistor"] = Thermistor(image["thermistor"])
     return scales
 
 

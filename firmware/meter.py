@@ -10,14 +10,14 @@ from micropython import const
 
 _LIMB_BITS = const(26)
 _LIMB_MASK = const((1 << 26) - 1)
-_SUM_BITS = const(12)
-_SUM_MASK = const((1 << 12) - 1)
 _FAR = const(0x3FFFFFFF)
 #: What the scales may give at most (main checks it at boot), so that a product of the two stays a small integer.
 LARGEST_VOLTAGE_uV = const(80_000_000)
 LARGEST_CURRENT_uA = const(12_000_000)
 #: A pair stands for the two or three steps since the one before, and for no more than these after a stall.
-_MOST_STEPS = const(8)
+MOST_STEPS = const(8)
+#: A window that nobody restarts begins anew after these, some days; its high limb then holds less than 2**28.
+_MOST_PAIRS = const(1 << 26)
 
 
 class Limbs:
@@ -63,21 +63,25 @@ class Window:
             self.voltage_max_uV = voltage_uV
 
     def add(self, voltage_uV, current_uA):
+        if self.pairs >= _MOST_PAIRS:
+            self.restart()
         self.pairs += 1
-        self._voltage_high += voltage_uV >> _SUM_BITS
-        self._voltage_low += voltage_uV & _SUM_MASK
-        self._current_high += current_uA >> _SUM_BITS
-        self._current_low += current_uA & _SUM_MASK
+        low = self._voltage_low + voltage_uV
+        self._voltage_high += low >> _LIMB_BITS
+        self._voltage_low = low & _LIMB_MASK
+        low = self._current_low + current_uA
+        self._current_high += low >> _LIMB_BITS
+        self._current_low = low & _LIMB_MASK
         if current_uA < self.current_min_uA:
             self.current_min_uA = current_uA
         if current_uA > self.current_max_uA:
             self.current_max_uA = current_uA
 
     def voltage_uV(self):
-        return ((self._voltage_high << _SUM_BITS) + self._voltage_low) // self.pairs
+        return ((self._voltage_high << _LIMB_BITS) + self._voltage_low) // self.pairs
 
     def current_uA(self):
-        return ((self._current_high << _SUM_BITS) + self._current_low) // self.pairs
+        return ((self._current_high << _LIMB_BITS) + self._current_low) // self.pairs
 
 
 def power_uW(voltage_uV, current_uA):
@@ -92,7 +96,7 @@ class Meter:
     def __init__(self, period_us):
         self._period_us = period_us
         self._current_is_fresh = False
-        #: Control steps since the last pair; the control step counts them up.
+        #: Control steps since the last pair; the control step counts them up to MOST_STEPS.
         self.steps = 0
         self.counting = False
         self.voltage_uV = 0
@@ -106,6 +110,9 @@ class Meter:
         self.log = Window()
 
     def take_current(self, current_uA):
+        # A zero out of its budget moves a reading beyond what the scale gives.
+        if not -LARGEST_CURRENT_uA <= current_uA <= LARGEST_CURRENT_uA:
+            current_uA = LARGEST_CURRENT_uA if current_uA > 0 else -LARGEST_CURRENT_uA
         self.current_uA = current_uA
         self._current_is_fresh = True
 
@@ -134,10 +141,8 @@ class Meter:
 
     def _count(self, current_uA, power):
         steps = self.steps
-        if steps > _MOST_STEPS:
-            steps = _MOST_STEPS
         self.charge.add(current_uA * steps)
-        if power < _FAR // _MOST_STEPS:
+        if -_FAR // MOST_STEPS < power < _FAR // MOST_STEPS:
             self.energy.add(power * steps)
             return
         # The product would pass 2**30.

@@ -23,8 +23,9 @@ class Junction:
         """`stages`, quickest first, each with r_mK_per_W, every_steps (a power of two from 2 to 512) and
         share_x32768, the part of the way that it goes in every_steps control steps."""
         self._resistance_mK_per_W = array("i", [stage["r_mK_per_W"] for stage in stages])
-        # Held below 2**30 for any power a shorted transistor could show; the guard has tripped long before.
-        self._largest_mW = _LARGEST_RISE_uK // max([stage["r_mK_per_W"] for stage in stages])
+        # All stages together are held below 2**30, whatever power a shorted transistor or a reversed reading
+        # shows; the guard has tripped long before.
+        self._largest_mW = _LARGEST_RISE_uK // sum([stage["r_mK_per_W"] for stage in stages])
         self._share = array("i", [stage["share_x32768"] for stage in stages])
         self._rise_uK = array("i", [0] * len(stages))
         every_turns = [stage["every_steps"] >> 1 for stage in stages]
@@ -38,6 +39,8 @@ class Junction:
         """Two control steps at `power_mW`; `rise_mK` is then the junction's rise above the sensor."""
         if power_mW > self._largest_mW:
             power_mW = self._largest_mW
+        elif power_mW < 0:
+            power_mW = 0
         self._turn = (self._turn + 1) % _TURNS
         for stage in range(self._quick):
             self._advance(stage, power_mW)

@@ -22,10 +22,12 @@ _CHECK = """
     total = {figure}
     total = {figure}
     micropython.heap_lock()
-    for _ in range({steps}):
-        wait()
-        step()
-    micropython.heap_unlock()
+    try:
+        for _ in range({steps}):
+            wait()
+            step()
+    finally:
+        micropython.heap_unlock()
     found = [{figure} - total, firmware.guard.fault, firmware.meter.telemetry.pairs]
 """
 

@@ -21,6 +21,17 @@ import wire
 from stand_in_board import Board, Session, IMAGE
 """
 
+# `sys` alone cannot be shadowed by a file on the path.
+_RP2_PRELUDE = """
+import json, micropython, sys
+import board, machine, time, wire
+from stand_in_board import IMAGE
+from streams import Sys, WouldBlock
+port = board.sys = Sys(sys.implementation)
+IMAGE["pins"] = {"gate": 15, "led_red": 16, "led_green": 17, "trigger": None, "fan": None, "off_button": None}
+IMAGE["i2c"] = {"id": 0, "scl": 5, "sda": 4, "frequency_Hz": 400_000}
+"""
+
 
 def on_board(lines: str, *, heapsize: str | None = None) -> Any:
     """Carry out `lines` on the board and return `found`."""
@@ -33,6 +44,15 @@ def on_32_bit_board(lines: str) -> Any:
     It has no `machine`, which board.py imports: that module is the stand-in's.
     """
     return _found(run_micropython32(_script(lines), extra_path=[_STAND_IN, _MACHINE]))
+
+
+def on_rp2_board(lines: str) -> Any:
+    """Carry out `lines` with the true board.py on the strict stand-ins for the port's modules.
+
+    The lines see `board` (the module), `machine`, `time`, `port` (what board.py has for `sys`), `IMAGE` and `wire`.
+    """
+    script = _RP2_PRELUDE + dedent(lines) + "\nprint(json.dumps(found))\n"
+    return _found(run_micropython(script, extra_path=[_MACHINE, _STAND_IN]))
 
 
 def _script(lines: str) -> str:

@@ -19,7 +19,9 @@ if TYPE_CHECKING:
 _NAME_BYTES = 16
 #: Every product stays below 2**30 in the firmware: 4095 codes * uA_per_code_x64, 32767 counts * whole.
 _LARGEST_DAC_A = (1 << 30) / 4096 / 64 * 4095 / 1e6
-_LARGEST_PER_COUNT = 32767
+#: What the firmware's meter holds (firmware/meter.py).
+_LARGEST_CURRENT_A = 12.0
+_LARGEST_VOLTAGE_V = 80.0
 #: Bits on the bus in the busiest step: DAC write, conversion begun, config and result read (9 bits a byte).
 _BUS_BITS = 170
 #: Ripple of mains rectifiers: 50 and 60 Hz grids, one and two pulses, and their harmonics.
@@ -143,16 +145,43 @@ def _integers_fit(board: BoardFile) -> None:
             f"with {sense.V_per_A:g} V/A the DAC spans {dac_A:.3g} A, more than the firmware's integers hold",
             f"choose resistance and gain so that it spans at most {_down(_LARGEST_DAC_A)} A",
         )
-    for key, per_count in (
-        ("current_sense.amplifier_gain", board.adc.count_V / sense.V_per_A * 1e6),
-        ("voltage_sense.ratio", board.adc.count_V * board.voltage_sense.ratio * 1e6),
-        ("force_sense.ratio", board.adc.count_V * board.force_sense.ratio * 1e6),
+    for key, per_count, pedestal_V, largest, unit in (
+        (
+            "current_sense.amplifier_gain",
+            board.adc.count_V / sense.V_per_A,
+            sense.pedestal_V,
+            _LARGEST_CURRENT_A,
+            "A",
+        ),
+        (
+            "voltage_sense.ratio",
+            board.adc.count_V * board.voltage_sense.ratio,
+            board.voltage_sense.pedestal_V,
+            _LARGEST_VOLTAGE_V,
+            "V",
+        ),
+        (
+            "force_sense.ratio",
+            board.adc.count_V * board.force_sense.ratio,
+            board.force_sense.pedestal_V,
+            _LARGEST_VOLTAGE_V,
+            "V",
+        ),
     ):
-        if not 1 <= per_count <= _LARGEST_PER_COUNT:
+        if per_count * 1e6 < 1:
             raise KeyMistake(
                 key,
-                f"gives {per_count:.3g} micro-units per count, beyond the firmware's integers",
-                f"choose it so that one count is 1 to {_LARGEST_PER_COUNT} uA or uV",
+                f"gives {per_count * 1e6:.3g} u{unit} per count, finer than the firmware's integers",
+                f"choose it so that one count is at least 1 u{unit}",
+            )
+        # The lowest code lies farthest from zero, because the pedestal lifts the zero.
+        span = per_count * 32768 + pedestal_V / board.adc.count_V * per_count
+        if span > largest:
+            raise KeyMistake(
+                key,
+                f"lets the converter span {span:.3g} {unit}, more than the {largest:g} {unit} that the firmware's "
+                "integers hold",
+                f"choose it, or adc.range_V, so that the lowest code means at most {largest:g} {unit}",
             )
 
 

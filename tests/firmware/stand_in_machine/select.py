@@ -8,7 +8,7 @@ POLLIN = 1
 POLLOUT = 4
 
 
-class poll:
+class poll:  # noqa: N801 - the documented name
     def __init__(self):
         self._watched = None
         self._mask = 0

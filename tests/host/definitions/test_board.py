@@ -145,3 +145,21 @@ def test_a_missing_table_is_asked_for_as_a_table(tmp_path: Path) -> None:
     path.write_text('name = "x"\n', encoding="utf-8")
     with pytest.raises(FileError, match=r"limits: it is missing.*\[limits\]"):
         load_board(path)
+
+
+@pytest.mark.parametrize(
+    ("change", "key", "told"),
+    [
+        ({"current_sense__amplifier_gain": "8.5"}, "current_sense.amplifier_gain", "12 A"),
+        ({"voltage_sense__ratio": "20.0"}, "voltage_sense.ratio", "80 V"),
+        ({"force_sense__ratio": "20.0"}, "force_sense.ratio", "80 V"),
+    ],
+)
+def test_a_front_end_that_spans_more_than_the_firmware_holds_is_refused(
+    change: dict[str, str], key: str, told: str
+) -> None:
+    """The same bounds as firmware/meter.py, where such a board would refuse to boot."""
+    with pytest.raises(FileError) as refused:
+        parse_board(changed(**change))
+    assert key in str(refused.value)
+    assert told in str(refused.value)
