@@ -12,6 +12,7 @@ import time
 from typing import Protocol
 
 from sinkwright.errors import LinkLost
+from sinkwright.simulator.pace import Pace
 from sinkwright.transport.channel import Channel
 from sinkwright.transport.reader_thread import ThreadedChannel
 from sinkwright.transport.urls import SimulatedUrl
@@ -21,10 +22,6 @@ PACE_S = 0.005
 
 #: One grant at most, so that what is sent meanwhile does not wait for long at a high speed.
 MAX_GRANT_US = 50_000
-
-#: A backlog beyond this wall time (a laptop that slept) is dropped instead of being run through at full
-#: speed.
-MAX_BACKLOG_S = 1.0
 
 
 class Exchanges(Protocol):
@@ -39,11 +36,7 @@ class Exchanges(Protocol):
 
 
 class PacedPort:
-    """A simulated board that runs at `speed` times the wall clock.
-
-    Above speed 1, simulated time never passes the last bytes sent plus half the silence limit: a host that is
-    a little slow would otherwise be taken for dead.
-    """
+    """A simulated board that runs at `speed` times the wall clock, at the pace of `simulator.pace`."""
 
     failures = (LinkLost, OSError)
     simulated = True
@@ -51,12 +44,10 @@ class PacedPort:
     def __init__(self, board: Exchanges, speed: float, silence_s: float) -> None:
         self.speed = speed
         self._board = board
-        self._lead_us = round(silence_s * 1e6 / 2) if speed > 1 else None
         self._outgoing = bytearray()
         self._arrived = threading.Condition()
         self._board_us = board.board_time_us
-        self._last_sent_us = self._board_us
-        self._anchor()
+        self._pace = Pace(speed, round(silence_s * 1e6), time.monotonic(), self._board_us)
 
     def read(self) -> bytes:
         due_us = self._due_us()
@@ -67,7 +58,7 @@ class PacedPort:
             data = bytes(self._outgoing)
             self._outgoing.clear()
             if data:
-                self._last_sent_us = self._board_us
+                self._pace.heard(time.monotonic(), self._board_us)
         if not data and due_us <= 0:
             return b""
         answer, self._board_us = self._board.exchange(data, max(1, min(due_us, MAX_GRANT_US)))
@@ -85,18 +76,7 @@ class PacedPort:
         self._board.close()
 
     def _due_us(self) -> int:
-        wall_s = time.monotonic() - self._anchor_wall_s
-        due_us = self._anchor_board_us + round(wall_s * self.speed * 1e6) - self._board_us
-        if due_us > MAX_BACKLOG_S * self.speed * 1e6:
-            self._anchor()
-            return 0
-        if self._lead_us is not None:
-            due_us = min(due_us, self._last_sent_us + self._lead_us - self._board_us)
-        return due_us
-
-    def _anchor(self) -> None:
-        self._anchor_wall_s = time.monotonic()
-        self._anchor_board_us = self._board_us
+        return self._pace.due_us(time.monotonic(), self._board_us)
 
 
 def open_simulated(url: SimulatedUrl) -> Channel:
