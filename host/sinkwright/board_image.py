@@ -7,12 +7,17 @@ Rounding. A scale is split into whole and part: reading = n*whole + (n*part >> 1
 2**14 * fraction. The part errs by at most 2**-15 per count, so a full-scale reading errs by at most 1 uA
 or uV from it, and 1 more from the shift. Zero counts and the DAC's zero code are the nearest: what is left of
 the zero, below half a count or code, belongs to the current zero that the board measures before each run.
+
+`python -m sinkwright.board_image BOARD.toml` prints the image as the JSON that a real board keeps in board.json.
 """
 
 from __future__ import annotations
 
+import json
 import math
+import sys
 import zlib
+from pathlib import Path
 from typing import Any
 
 from .definitions.board import DAC_CODES, GAIN_BITS, RATE_BITS, BoardFile, Ntc
@@ -170,3 +175,24 @@ def _limits(board: BoardFile) -> dict[str, int]:
         "slew_uA_per_ms": round(limits.slew_A_per_s * 1000),
         "silence_ms": round(limits.host_silence_s * 1000),
     }
+
+
+def main(arguments: list[str]) -> int:
+    """Print the image of the board file named, or say in one paragraph why there is none."""
+    from .definitions.loading import load_board
+    from .errors import SinkwrightError
+
+    if len(arguments) != 1:
+        sys.stderr.write("usage: python -m sinkwright.board_image BOARD.toml\n")
+        return 2
+    try:
+        image = compile_board(load_board(Path(arguments[0])))
+    except SinkwrightError as error:
+        sys.stderr.write(f"{error}\n")
+        return error.exit_code
+    sys.stdout.write(json.dumps(image) + "\n")
+    return 0
+
+
+if __name__ == "__main__":
+    sys.exit(main(sys.argv[1:]))

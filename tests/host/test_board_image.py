@@ -16,7 +16,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from sinkwright import thermistor
-from sinkwright.board_image import compile_board, split
+from sinkwright.board_image import compile_board, main, split
 from sinkwright.definitions.board import BoardFile
 from sinkwright.definitions.loading import default_board_path, load_board, parse_board
 
@@ -193,3 +193,22 @@ def test_the_bands_of_the_guard_are_ordered(image: dict[str, Any]) -> None:
     assert 0 < image["zero_budget_uA"] < image["off_current_uA"] < image["limits"]["current_uA"]
     assert image["demand_margin_uA"] == 150_000
     assert image["zero_budget_uA"] == 13_840
+
+
+def test_the_module_prints_the_image_of_a_board_file(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    board = tmp_path / "my-board.toml"
+    board.write_text(default_board_path().read_text(encoding="utf-8"), encoding="utf-8")
+    assert main([str(board)]) == 0
+    assert json.loads(capsys.readouterr().out) == compile_board(load_board(board))
+
+
+def test_the_module_says_what_is_wrong_with_a_board_file(
+    tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    (tmp_path / "bad.toml").write_text("name = 3", encoding="utf-8")
+    assert main([str(tmp_path / "bad.toml")]) == 2
+    told = capsys.readouterr()
+    assert told.out == ""
+    assert "bad.toml" in told.err
