@@ -22,7 +22,7 @@ def test_a_firmware_file_compiles(name: str, tmp_path: Path) -> None:
         "-o", str(out), str(FIRMWARE / name), stdout=subprocess.PIPE, stderr=subprocess.STDOUT
     )
     said, _ = compiler.communicate(timeout=30)
-    assert compiler.returncode == 0, said.decode()
+    assert compiler.returncode == 0, said
     assert out.read_bytes().startswith(MAGIC)
 
 

