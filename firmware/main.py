@@ -111,7 +111,8 @@ class Firmware:
             self._button_turns -= 1
         if self.monitor is not None and self.monitor.tripped():
             self.guard.latch(wire.FAULT_OVER_CURRENT, self.meter.current_uA, self.monitor.limit_uA)
-        self.runs.service()
+        if self.runs.going and self.machine.state != wire.STATE_SINKING:
+            self.runs.note_end()
         content = self.link.poll()
         if content is not None:
             self.dispatch.take(content)

@@ -62,11 +62,16 @@ class Window:
         if voltage_uV > self.voltage_max_uV:
             self.voltage_max_uV = voltage_uV
 
-    def add(self, voltage_uV, current_uA):
+    def add(self, seen_uV, mean_uV, current_uA):
+        """A pair: the voltage that completed it, for the extremes, and its mean voltage and current."""
         if self.pairs >= _MOST_PAIRS:
             self.restart()
         self.pairs += 1
-        low = self._voltage_low + voltage_uV
+        if seen_uV < self.voltage_min_uV:
+            self.voltage_min_uV = seen_uV
+        if seen_uV > self.voltage_max_uV:
+            self.voltage_max_uV = seen_uV
+        low = self._voltage_low + mean_uV
         self._voltage_high += low >> LIMB_BITS
         self._voltage_low = low & LIMB_MASK
         low = self._current_low + current_uA
@@ -122,23 +127,23 @@ class Meter:
         """Return whether this voltage completed a pair."""
         before = self.voltage_uV
         self.voltage_uV = voltage_uV
+        if self._current_is_fresh:
+            self._current_is_fresh = False
+            self._pair((before + voltage_uV) >> 1)
+            return True
         self.telemetry.see_voltage(voltage_uV)
         if self.counting:
             self.log.see_voltage(voltage_uV)
-        if not self._current_is_fresh:
-            return False
-        self._current_is_fresh = False
-        self._pair((before + voltage_uV) >> 1)
-        return True
+        return False
 
-    def _pair(self, voltage_uV):
+    def _pair(self, mean_uV):
         current_uA = self.current_uA
-        power = power_uW(voltage_uV, current_uA)
+        power = power_uW(mean_uV, current_uA)
         self.power_uW = power
-        self.pair_uV = voltage_uV
-        self.telemetry.add(voltage_uV, current_uA)
+        self.pair_uV = mean_uV
+        self.telemetry.add(self.voltage_uV, mean_uV, current_uA)
         if self.counting:
-            self.log.add(voltage_uV, current_uA)
+            self.log.add(self.voltage_uV, mean_uV, current_uA)
             self._count(current_uA, power)
         self.steps = 0
 

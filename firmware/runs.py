@@ -4,12 +4,7 @@ A run lasts from Enable to whatever takes the load out of SINKING. One that may 
 being overwritten until somebody says that it is in a record. Everything here happens between control steps.
 """
 
-from micropython import const
-
 import wire
-
-#: Long beyond any silence limit, and far from where a count of steps would leave the small integers.
-_QUIET_ENOUGH_steps = const(1 << 28)
 
 
 class Runs:
@@ -44,14 +39,8 @@ class Runs:
         self._ends.begin()
         self.going = True
 
-    def service(self):
-        """Once after each control step."""
-        if self.going and self._machine.state != wire.STATE_SINKING:
-            self._note_end()
-        if self._guard.quiet_steps > _QUIET_ENOUGH_steps:
-            self._guard.quiet_steps = _QUIET_ENOUGH_steps
-
-    def _note_end(self):
+    def note_end(self):
+        """The load has left SINKING: what `going` is for whoever looks after each control step."""
         self.going = False
         self.ended_us = self._time.now_us()
         self.ended_by = self._what_ended_it()

@@ -332,7 +332,7 @@ def test_a_window_that_nobody_reads_takes_every_pair_small() -> None:
     window = Window()
     def call(voltage_uV, current_uA):
         for _ in range(40_000):
-            window.add(voltage_uV, current_uA)
+            window.add(voltage_uV, voltage_uV, current_uA)
     """
     assert beyond_small(window, [(LARGEST_VOLTAGE_uV, LARGEST_CURRENT_uA)] * 4) == []
     assert beyond_small(window, [(-LARGEST_VOLTAGE_uV, -LARGEST_CURRENT_uA)] * 4) == []
