@@ -76,7 +76,15 @@ class Child:
         Raises LinkLost when the child has ended or hangs. An exception from a signal handler leaves the
         stream of answers whole: the next exchange reads on where this one stopped.
         """
+        self.begin(data, grant_us)
+        return self.finish()
+
+    def begin(self, data: bytes, grant_us: int) -> None:
+        """The first half of an exchange: the child runs on while its host does something else."""
         self._write(_REQUEST.pack(grant_us, len(data)) + data)
+
+    def finish(self) -> tuple[bytes, int]:
+        """The second half: wait for what the child says."""
         answer = self._received or self._read()
         while len(answer) < _HEAD or len(answer) < _HEAD + (count := _REPLY.unpack_from(answer)[1]):
             self._received = answer

@@ -30,7 +30,7 @@ _POWER_ON = 1
 class SimulatedBoard:
     """A running simulated board.
 
-    `exchange` is the only way in and out. Use it from one thread at a time.
+    `exchange` is the way in and out. Use it from one thread at a time.
     """
 
     def __init__(self, child: Child, interpreter: Interpreter) -> None:
@@ -83,6 +83,15 @@ class SimulatedBoard:
             data = data[MAX_BYTES:]
         answer, self.board_time_us = self._child.exchange(data, grant_us)
         return early + answer, self.board_time_us
+
+    def run_ahead(self, grant_us: int) -> None:
+        """Begin an exchange without bytes, and do not wait for it; `catch_up` must come next."""
+        self._child.begin(b"", grant_us)
+
+    def catch_up(self) -> tuple[bytes, int]:
+        """What `run_ahead` led to, as from `exchange`."""
+        answer, self.board_time_us = self._child.finish()
+        return answer, self.board_time_us
 
     def close(self) -> None:
         """Power down. May be called twice; never raises."""

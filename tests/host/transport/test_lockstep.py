@@ -33,6 +33,12 @@ class ScriptedBoard:
                 return self.script.pop(due[0]), self.board_time_us
         return b"", self.board_time_us
 
+    def run_ahead(self, grant_us: int) -> None:
+        self.ahead = self.exchange(b"", grant_us)
+
+    def catch_up(self) -> tuple[bytes, int]:
+        return self.ahead
+
     def close(self) -> None:
         self.closed += 1
 
@@ -118,3 +124,34 @@ def test_it_says_what_it_is_and_closes_its_board():
     assert (channel.url, channel.simulated, channel.lock_step) == ("sim:,speed=max", True, True)
     channel.close()
     assert board.closed == 1
+
+
+def test_while_frames_only_stream_in_the_board_runs_one_grant_ahead():
+    board = ScriptedBoard({at: b"frame" for at in range(100_000, 1_000_000, 100_000)})
+    channel = LockStepChannel("sim:", board)
+    clocks = []
+    for _ in range(4):
+        assert receive_inline(channel, 1.0) == b"frame"
+        clocks.append((round(channel.now_s(), 1), round(board.board_time_us / 1e6, 1)))
+    assert clocks == [(0.1, 0.1), (0.2, 0.3), (0.3, 0.4), (0.4, 0.5)]
+
+
+def test_what_is_sent_meanwhile_arrives_with_the_next_grant_and_then_the_board_waits_again():
+    board = ScriptedBoard({at: b"frame" for at in range(100_000, 1_000_000, 100_000)})
+    channel = LockStepChannel("sim:", board)
+    receive_inline(channel, 1.0), receive_inline(channel, 1.0)
+    channel.send(b"off")
+    assert receive_inline(channel, 1.0) == b"frame"
+    assert board.heard[-1] == b""
+    assert receive_inline(channel, 1.0) == b"frame"
+    assert board.heard[-1] == b"off"
+    assert channel.now_s() == pytest.approx(board.board_time_us / 1e6)
+
+
+def test_a_board_that_ends_while_it_runs_ahead_is_told_by_the_next_receive():
+    class Ends(ScriptedBoard):
+        def run_ahead(self, grant_us: int) -> None:
+            raise LinkLost("gone")
+
+    channel = LockStepChannel("sim:", Ends({100_000: b"one", 200_000: b"two", 300_000: b"three"}))
+    assert [receive_inline(channel, 1.0) for _ in range(3)] == [b"one", b"two", b"three"]
