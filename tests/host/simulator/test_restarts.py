@@ -99,7 +99,7 @@ def under_load(firmware: Path) -> Host:
     host.ask(SetTelemetry(43))
     hear_until(host, 1.0)
     assert not isinstance(host.ask(Enable(Silence.STOP)), Refused)
-    hear_until(host, 2.9)
+    hear_until(host, 2.7)
     status = host.ask(GetStatus())
     assert isinstance(status, Status)
     assert status.state == State.SINKING
