@@ -132,8 +132,6 @@ class Thermistor:
     def __init__(self, entry):
         self._counts = array("i", entry["counts"])
         self._mC = array("i", entry["mC"])
-        self.open_counts = entry["open_counts"]
-        self.short_counts = entry["short_counts"]
 
     def reading(self, counts):
         """Temperature in millidegree; beyond either end of the table, the end's own."""

@@ -16,9 +16,10 @@ from sinkwright.definitions.plan import Hold
 from sinkwright.procedures.endings import BOARD_ENDS
 from sinkwright.procedures.gathering import Point, point_of, time_mean
 from sinkwright.procedures.leads import Terminals
-from sinkwright.procedures.procedure import NOT_REACHED, Found, Procedure, Step, board_clock
+from sinkwright.procedures.procedure import CLOCK_SHARE, NOT_REACHED, Found, Procedure, Step, board_clock
 from sinkwright.procedures.setpoint import SetPoint
 from sinkwright.records.board_log import as_sample
+from sinkwright.uncertainty.charge import integrated_charge
 from sinkwright.uncertainty.parts import Averaged
 from sinkwright_wire.vocabulary import Limiting, State
 
@@ -192,11 +193,10 @@ class HoldRun(Procedure[Hold]):
         Gains and offsets err alike in every second, so they act on the whole and are not averaged down.
         """
         elapsed_s = self._elapsed_s()
-        duration = board_clock() * elapsed_s
         found = {
             "capacity_Ah": _no_current(),
             "energy_Wh": _no_current(),
-            "duration_s": Found(duration, "", cut_short),
+            "duration_s": Found(board_clock() * elapsed_s, "", cut_short),
         }
         if self.last is None or self.last.charge_C <= 0 or elapsed_s <= 0:
             return found
@@ -206,7 +206,7 @@ class HoldRun(Procedure[Hold]):
             voltage=Averaged(energy_J / charge_C, 0.0, self.frames, "voltage over the whole hold"),
             current=Averaged(charge_C / elapsed_s, 0.0, self.frames, "current over the whole hold"),
         )
-        charge = terminals.current(whole) * duration
+        charge = integrated_charge(terminals.current(whole), elapsed_s, CLOCK_SHARE * 1e6)
         found["capacity_Ah"] = Found(charge / 3600.0, "", cut_short)
         unresolved = cut_short or terminals.unresolved(point)
         found["energy_Wh"] = Found(terminals.voltage(whole) * charge / 3600.0, "", unresolved)

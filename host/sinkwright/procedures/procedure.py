@@ -6,6 +6,7 @@ knows neither the kinds nor how readings are taken.
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, ClassVar, Generic, TypeVar
 
@@ -55,7 +56,7 @@ class Found:
 
 
 @dataclass
-class Procedure(Generic[TestT]):
+class Procedure(ABC, Generic[TestT]):
     """One test being carried out. Subclasses set `kind` and `not_tested`, and fill `notes` and `points`."""
 
     kind: ClassVar[str] = ""
@@ -67,13 +68,13 @@ class Procedure(Generic[TestT]):
     points: list[dict[str, float]] = field(default_factory=list)
     stopped_by: str | None = None
 
+    @abstractmethod
     async def carry_out(self) -> None:
         """Draw, wait and read. Raises Stopped (a fault, derating, an interruption) and LinkLost."""
-        raise NotImplementedError
 
+    @abstractmethod
     def found(self) -> dict[str, Found]:
         """The quantities of this kind from what was measured so far."""
-        raise NotImplementedError
 
     @property
     def source(self) -> SourceUnderTest:
